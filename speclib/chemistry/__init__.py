@@ -1,0 +1,1 @@
+"""Chemistry without spectra: formulas, isotopes, sub-formulas, unit-mass assignment, molecules."""

@@ -1,0 +1,73 @@
+"""The one door to RDKit: facts of a molecule from its SMILES.
+
+RDKit loads on first use, because it costs a noticeable fraction of a second.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+from speclib.chemistry.elements import ELEMENTS
+from speclib.chemistry.formula import Formula
+from speclib.errors import InvalidStructureError
+
+MAX_SMILES_LENGTH = 2000
+
+
+@dataclass(frozen=True)
+class MoleculeFacts:
+    """What a SMILES says: canonical SMILES, standard InChIKey and the formula (deuterium labels as D)."""
+
+    smiles: str
+    inchikey: str
+    formula: Formula
+
+    @property
+    def skeleton(self) -> str:
+        """First block of the InChIKey: the connectivity, without stereo and isotope layers."""
+        return self.inchikey.split("-", 1)[0]
+
+
+def molecule_facts(smiles: str) -> MoleculeFacts:
+    """Read a SMILES.
+
+    Raises:
+        InvalidStructureError: empty, unreadable, several components, wildcard atoms, charged as a whole, no standard
+        InChI, or an element outside the supported ones.
+    """
+    from rdkit import Chem, RDLogger
+    from rdkit.Chem import inchi
+
+    text = smiles.strip()
+    if not text:
+        raise InvalidStructureError("an empty text is not a SMILES")
+    if len(text) > MAX_SMILES_LENGTH:
+        raise InvalidStructureError(f"a SMILES of {len(text)} characters is not read")
+    RDLogger.DisableLog("rdApp.*")
+    molecule = Chem.MolFromSmiles(text)
+    if molecule is None:
+        raise InvalidStructureError(f"{text!r} is not a SMILES that can be read", "check brackets, rings and valences")
+    if molecule.GetNumAtoms() == 0 or any(atom.GetAtomicNum() == 0 for atom in molecule.GetAtoms()):
+        raise InvalidStructureError(f"{text!r} has no atoms or has wildcard atoms", "draw the whole molecule")
+    if "." in text and len(Chem.GetMolFrags(molecule)) > 1:
+        raise InvalidStructureError(f"{text!r} has several components", "a compound is one molecule")
+    if Chem.GetFormalCharge(molecule) != 0:
+        raise InvalidStructureError(f"{text!r} is charged", "give the neutral molecule")
+    key = inchi.MolToInchiKey(molecule)
+    if not key:
+        raise InvalidStructureError(f"{text!r} has no standard InChI", "check the structure")
+    return MoleculeFacts(Chem.MolToSmiles(molecule), key, _formula(Chem.AddHs(molecule), text))
+
+
+def _formula(molecule: object, text: str) -> Formula:
+    counts: dict[str, int] = {}
+    for atom in molecule.GetAtoms():  # type: ignore[attr-defined]
+        symbol = atom.GetSymbol()
+        if symbol == "H" and atom.GetIsotope() == 2:
+            symbol = "D"
+        elif atom.GetIsotope():
+            raise InvalidStructureError(f"{text!r} has an isotope label other than deuterium", "only D is supported")
+        if symbol not in ELEMENTS:
+            raise InvalidStructureError(f"{text!r} holds {symbol}, which speclib does not know")
+        counts[symbol] = counts.get(symbol, 0) + 1
+    return Formula.of(counts)
