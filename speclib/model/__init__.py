@@ -1,0 +1,1 @@
+"""Frozen records that every room shares; results carry `to_json()` and a schema number."""
