@@ -1,0 +1,1 @@
+"""Steps that make a spectrum comparable; each returns a new object and never changes what was read."""

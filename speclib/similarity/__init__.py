@@ -1,0 +1,3 @@
+"""Similarity of two spectra: slow, obvious reference code on plain sorted arrays. It is the definition of every
+score.
+"""
