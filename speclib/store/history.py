@@ -1,0 +1,44 @@
+"""Reading the trail: all events, or those that touched one row."""
+
+from __future__ import annotations
+
+import json
+import sqlite3
+from dataclasses import dataclass
+from typing import Any
+
+from speclib.store.trail import Event, event_from_row
+
+
+@dataclass(frozen=True)
+class HistoryEntry:
+    """An event and, when one row was asked for, how it changed that row."""
+
+    event: Event
+    changes: tuple[dict[str, Any], ...] = ()
+
+    def to_json(self) -> dict[str, Any]:
+        """The entry as plain values."""
+        return {**self.event.to_json(), "changes": list(self.changes)}
+
+
+def recent_events(connection: sqlite3.Connection, limit: int | None = None) -> list[HistoryEntry]:
+    """Events, newest first."""
+    rows = connection.execute("SELECT * FROM events ORDER BY id DESC LIMIT ?", (-1 if limit is None else limit,))
+    return [HistoryEntry(event_from_row(row)) for row in rows]
+
+
+def events_of_row(connection: sqlite3.Connection, row_uid: str) -> list[HistoryEntry]:
+    """Events that touched a row or a row that names it in its key, newest first, with the records before and after."""
+    rows = connection.execute(
+        "SELECT e.*, c.table_name, c.row_uid, c.before, c.after FROM event_changes c "
+        "JOIN events e ON e.id = c.event_id "
+        "WHERE c.row_uid = ?1 OR c.row_uid LIKE ?1 || '|%' ORDER BY e.id DESC, c.id",
+        (row_uid,),
+    ).fetchall()
+    by_event: dict[int, tuple[Event, list[dict[str, Any]]]] = {}
+    for row in rows:
+        entry = by_event.setdefault(row["id"], (event_from_row(row), []))
+        before, after = (json.loads(row[name]) if row[name] else None for name in ("before", "after"))
+        entry[1].append({"table": row["table_name"], "row": row["row_uid"], "before": before, "after": after})
+    return [HistoryEntry(event, tuple(changes)) for event, changes in by_event.values()]
