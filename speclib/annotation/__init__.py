@@ -1,0 +1,1 @@
+"""Assignments: made by hand, and carried from confirmed relatives to an unknown."""

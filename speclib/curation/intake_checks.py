@@ -1,0 +1,91 @@
+"""Checks at the door: what is worth saying about a spectrum when it comes in."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+
+from speclib.chemistry.formula import Formula, parse_formula
+from speclib.cleaning.nominal import bin_to_nominal_mass
+from speclib.errors import InvalidFormulaError
+from speclib.model.entry import LibrarySpectrum
+from speclib.model.finding import Finding, Severity
+from speclib.model.spectrum import MassAccuracy, SourceSpectrum, Spectrum
+
+COMMON_PRACTICE = "common practice, no source"
+
+
+def check_at_intake(
+    found: SourceSpectrum, formula: Formula | None, same_peaks: Sequence[LibrarySpectrum]
+) -> list[Finding]:
+    """Findings on a spectrum that is about to be stored; `same_peaks` are held spectra with identical peaks."""
+    findings = [Finding("reader", Severity.NOTE, note, "reader") for note in found.notes]
+    findings += check_scanned_range(found.spectrum)
+    findings += check_unit_mass_boundaries(found.spectrum, formula)
+    findings += check_claimed_formula(found, formula)
+    findings += [
+        Finding(
+            "identical peaks",
+            Severity.DOUBT,
+            f"every peak equals those of {held.label}: one of the two names may be wrong",
+            COMMON_PRACTICE,
+        )
+        for held in same_peaks
+    ]
+    return findings
+
+
+def check_scanned_range(spectrum: Spectrum) -> list[Finding]:
+    """A scanned range that is not known counts as unlimited in every comparison."""
+    measured = spectrum.measurement
+    missing = [name for name in ("mz_from", "mz_to") if getattr(measured, name) is None]
+    if not missing:
+        return []
+    return [
+        Finding(
+            "scanned range",
+            Severity.DOUBT,
+            f"{' and '.join(missing)} not given: the scanned range counts as unlimited, which can lower similarities",
+            COMMON_PRACTICE,
+        )
+    ]
+
+
+def check_unit_mass_boundaries(spectrum: Spectrum, formula: Formula | None) -> list[Finding]:
+    """Fractional m/z of a unit-mass spectrum that could belong to either whole number."""
+    if spectrum.mass_accuracy is not MassAccuracy.UNIT:
+        return []
+    assignment = bin_to_nominal_mass(spectrum, formula).assignment
+    if not assignment.doubtful:
+        return []
+    doubtful = [(float(spectrum.mz[i]), int(assignment.unit_mz[i])) for i in assignment.doubtful]
+    listed = ", ".join(f"{mz:g} (taken as {unit})" for mz, unit in doubtful[:8])
+    more = f" and {len(doubtful) - 8} more" if len(doubtful) > 8 else ""
+    return [
+        Finding(
+            "unit masses",
+            Severity.DOUBT,
+            f"m/z near the boundary between two whole numbers: {listed}{more}",
+            "mass-defect line per spectrum (project rule)",
+            tuple(mz for mz, _ in doubtful),
+        )
+    ]
+
+
+def check_claimed_formula(found: SourceSpectrum, formula: Formula | None) -> list[Finding]:
+    """The formula written in the file against that of the compound it is stored under."""
+    if not found.formula or formula is None:
+        return []
+    try:
+        claimed = parse_formula(found.formula)
+    except InvalidFormulaError:
+        return [
+            Finding(
+                "formula",
+                Severity.NOTE,
+                f"the file's formula {found.formula!r} cannot be read",
+                COMMON_PRACTICE,
+            )
+        ]
+    if claimed == formula:
+        return []
+    return [Finding("formula", Severity.FAULT, f"the file says {claimed}, the structure is {formula}", COMMON_PRACTICE)]
