@@ -153,9 +153,16 @@ def _judge(unknown: Unknown, candidate: Candidate, all_: Sequence[Candidate], sa
 
 
 def _reason(candidate: Candidate, loss: str | None) -> str:
-    best = candidate.votes[0]
-    others = f" and {candidate.compounds - 1} more" if candidate.compounds > 1 else ""
-    if best.route is Route.SAME_ION:
-        return f"{best.compound_name}{others} shows {candidate.formula}+ at the same m/z ({candidate.mechanism})"
-    lost = f"loses {loss}" if loss else "loses nothing"
-    return f"{best.compound_name}{others} {lost} in the same way ({candidate.mechanism})"
+    """The argument in words: who shows the same ion, who loses the same neutral, and by which mechanism."""
+    parts = []
+    for route, one, many in (
+        (Route.SAME_ION, f"shows {candidate.formula}+ at the same m/z", f"show {candidate.formula}+ at the same m/z"),
+        (Route.SAME_LOSS, f"loses {loss or 'nothing'} in the same way", f"lose {loss or 'nothing'} in the same way"),
+    ):
+        names = list(dict.fromkeys(vote.compound_name for vote in candidate.votes if vote.route is route))
+        if names:
+            others = f" and {len(names) - 1} more" if len(names) > 1 else ""
+            parts.append(
+                (candidate.votes[0].route is not route, f"{names[0]}{others} {one if len(names) == 1 else many}")
+            )
+    return f"{'; '.join(text for _, text in sorted(parts))} ({candidate.mechanism})"

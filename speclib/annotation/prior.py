@@ -1,19 +1,27 @@
 """Confidence of a carried proposal before anything has been fitted on the library.
 
-A documented prior, no measured probability. It starts from the nearest donor's similarity and the share of the vote,
-and is higher when the unknown's formula leaves one composition only. `reliability` replaces it.
+A documented prior, no measured probability: the proposal's share of the vote, where a small fixed vote stands for a
+composition that no donor knows. `reliability` replaces it.
 """
 
 from __future__ import annotations
 
 from collections.abc import Sequence
 
-from speclib.annotation.checks import DONORS, LOSS, Candidate, CheckContext
+from speclib.annotation.checks import LOSS, Candidate, CheckContext
 from speclib.chemistry.subformulae import subformulae_of_nominal_mz
 from speclib.model.results import Check
 
 PRIOR_BASIS = "prior"
+UNSEEN_VOTE = 0.1
+"""Vote of a composition that no donor knows, when the molecular formula is not known either."""
+UNSEEN_VOTE_WITHIN_FORMULA = 0.05
+"""The same when the formula is known and allows other compositions; it is 0 when it allows one only."""
+SINGLE_WITNESS_LIMIT = 0.9
+"""One compound alone does not make a composition surer than this while the formula allows others."""
+IMPLAUSIBLE_LOSS_FACTOR = 0.5
 LOWEST, HIGHEST = 0.02, 0.97
+"""A prior is never certain."""
 
 
 def prior_confidence(
@@ -21,18 +29,18 @@ def prior_confidence(
 ) -> float:
     """Prior probability that the composition is right.
 
-    share of the vote x (0.55 + 0.45 x best similarity), halved for an implausible loss; when the formula allows one
-    composition only, at least 0.9. Clipped to 0.02 .. 0.97: a prior is never certain.
+    own vote / (own vote + votes of rivals that fit the formula + unseen vote), halved for an implausible loss, and
+    within 0.02 and 0.97. The two unseen votes were chosen so that, on principal-peak tables with each compound left
+    out in turn, the prior is close to the share found right without a formula and stays below it with one.
     """
     molecule = context.molecule
     live = [rival for rival in rivals if molecule is None or molecule.contains(rival.formula)]
-    share = candidate.weight / (candidate.weight + sum(rival.weight for rival in live))
-    best = max(vote.similarity for vote in candidate.votes)
-    value = share * (0.55 + 0.45 * best)
-    if molecule is not None and len(subformulae_of_nominal_mz(molecule, candidate.mz)) == 1:
-        value = max(value, 0.9)
+    unseen, limit = UNSEEN_VOTE, HIGHEST
+    if molecule is not None:
+        only = len(subformulae_of_nominal_mz(molecule, candidate.mz)) == 1
+        unseen = 0.0 if only else UNSEEN_VOTE_WITHIN_FORMULA
+        limit = SINGLE_WITNESS_LIMIT if candidate.compounds == 1 and not only else HIGHEST
+    value = candidate.weight / (candidate.weight + unseen + sum(rival.weight for rival in live))
     if any(check.name == LOSS and check.passed is False for check in checks):
-        value *= 0.5
-    if any(check.name == DONORS and check.passed is False for check in checks):
-        value *= 0.9
-    return min(HIGHEST, max(LOWEST, value))
+        value *= IMPLAUSIBLE_LOSS_FACTOR
+    return min(limit, max(LOWEST, value))

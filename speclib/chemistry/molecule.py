@@ -43,7 +43,7 @@ def molecule_facts(smiles: str) -> MoleculeFacts:
         raise InvalidStructureError("an empty text is not a SMILES")
     if len(text) > MAX_SMILES_LENGTH:
         raise InvalidStructureError(f"a SMILES of {len(text)} characters is not read")
-    RDLogger.DisableLog("rdApp.*")
+    RDLogger.DisableLog("rdApp.*")  # type: ignore[attr-defined]
     molecule = Chem.MolFromSmiles(text)
     if molecule is None:
         raise InvalidStructureError(f"{text!r} is not a SMILES that can be read", "check brackets, rings and valences")
@@ -53,7 +53,7 @@ def molecule_facts(smiles: str) -> MoleculeFacts:
         raise InvalidStructureError(f"{text!r} has several components", "a compound is one molecule")
     if Chem.GetFormalCharge(molecule) != 0:
         raise InvalidStructureError(f"{text!r} is charged", "give the neutral molecule")
-    key = inchi.MolToInchiKey(molecule)
+    key = inchi.MolToInchiKey(molecule)  # type: ignore[no-untyped-call]
     if not key:
         raise InvalidStructureError(f"{text!r} has no standard InChI", "check the structure")
     return MoleculeFacts(Chem.MolToSmiles(molecule), key, _formula(Chem.AddHs(molecule), text))

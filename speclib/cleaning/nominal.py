@@ -34,7 +34,7 @@ def bin_to_nominal_mass(spectrum: Spectrum, formula: Formula | None = None) -> N
         return NominalPeaks(
             whole.astype(np.float64), spectrum.intensity[np.argsort(unit)], np.argsort(unit), assignment
         )
-    total = np.bincount(group, weights=spectrum.intensity)
+    total = np.bincount(group, weights=spectrum.intensity).astype(np.float64)
     tallest = np.zeros(len(whole), dtype=np.int64)
     for position in np.argsort(spectrum.intensity, kind="stable"):
         tallest[group[position]] = position

@@ -14,7 +14,7 @@ from speclib.cli.options import (
     read_options,
     reading_options,
 )
-from speclib.cli.output import CAUTION, number, print_json, print_lines, print_table, talk
+from speclib.cli.output import CAUTION, number, print_json, print_lines, print_table, show_disagreements, talk
 
 
 @click.command()
@@ -43,7 +43,7 @@ from speclib.cli.output import CAUTION, number, print_json, print_lines, print_t
 @by_option
 @json_option
 @click.pass_context
-def carry(ctx: click.Context, target: str, as_json: bool, **values: Any) -> None:
+def carry(ctx: click.Context, /, target: str, as_json: bool, **values: Any) -> None:
     """Propose fragment assignments for an unknown, carried from its confirmed relatives.
 
     The unknown is the spectrum in FILE, or a stored SPECTRUM by its number. It is kept as a case with its proposals,
@@ -85,20 +85,21 @@ def _show(result: Any) -> None:
     if result.donors:
         print_lines(["", "Donors"])
         print_table(
-            ("rank", "compound", "formula", "simil.", "dM", "what disagrees"),
+            ("rank", "compound", "formula", "simil.", "peaks", "dM"),
             (
                 (
                     d.rank,
                     d.compound.name,
                     d.compound.formula,
                     number(d.similarity),
+                    d.matched_peaks,
                     "-" if d.mass_difference is None else f"{d.mass_difference:+g}",
-                    "; ".join(d.disagreements[:2]) or "nothing above 5 % of the base peak",
                 )
                 for d in result.donors
             ),
-            right=("rank", "simil.", "dM"),
+            right=("rank", "simil.", "peaks", "dM"),
         )
+        show_disagreements(result.donors, 3)
     show_proposals(result.proposals, result.refused)
     for remark in result.remarks:
         talk(f"Note: {remark}.")
@@ -108,11 +109,11 @@ def _show(result: Any) -> None:
 
 
 def show_proposals(proposals: Any, refused: Any) -> None:
-    """Tables of proposals and of refused ones, each with what speaks against it."""
+    """Tables of proposals and of refused ones; what speaks against a proposal stands below its table."""
     print_lines([f"Proposals ({len(proposals)})"])
     if proposals:
         print_table(
-            ("id", "m/z", "ion", "loss", "mechanism", "route", "conf.", "state", "argument"),
+            ("id", "m/z", "ion", "loss", "mechanism", "route", "conf.", "state", "donors"),
             (
                 (
                     p.id or "-",
@@ -123,11 +124,17 @@ def show_proposals(proposals: Any, refused: Any) -> None:
                     p.route.value,
                     number(p.confidence, 2),
                     p.state,
-                    _argument(p),
+                    _donors(p),
                 )
                 for p in proposals
             ),
             right=("id", "m/z", "conf."),
+        )
+        print_lines(
+            f"{p.id or ''} m/z {p.mz:g} {p.formula}+ but: {check.detail}".strip()
+            for p in proposals
+            for check in p.checks
+            if check.passed is False
         )
         basis = sorted({p.confidence_basis for p in proposals})
         print_lines([f"Confidence: {', '.join(basis)} (a prior is a documented guess, not a measured probability)."])
@@ -150,6 +157,6 @@ def show_proposals(proposals: Any, refused: Any) -> None:
         )
 
 
-def _argument(proposal: Any) -> str:
-    failed = [f"but: {c.detail}" for c in proposal.checks if c.passed is False]
-    return "; ".join([*failed, proposal.reason])
+def _donors(proposal: Any) -> str:
+    names = list(dict.fromkeys(vote.compound_name for vote in proposal.donors))
+    return names[0] + (f" +{len(names) - 1}" if len(names) > 1 else "")

@@ -50,7 +50,8 @@ def show(ctx: click.Context, case_id: int, as_json: bool) -> None:
         [
             f"Case {found.id} ({found.status}): {found.spectrum.label}",
             f"molecular mass {mass['value'] or '-'} ({mass['origin']}), "
-            f"formula {formula['value'] or '-'} ({formula['origin']}), made at library state {found.library_state[:12]}",
+            f"formula {formula['value'] or '-'} ({formula['origin']}); "
+            f"made at library state {found.library_state[:12]}",
         ]
     )
     if found.neighbours:

@@ -21,7 +21,7 @@ from speclib.cli.output import print_json, print_lines, print_table, talk
 @by_option
 @json_option
 @click.pass_context
-def intake(ctx: click.Context, files: tuple[Path, ...], as_json: bool, **values: Any) -> int:
+def intake(ctx: click.Context, /, files: tuple[Path, ...], as_json: bool, **values: Any) -> int:
     """Read spectra into the library and check them.
 
     FILES become unknowns, or provisional references of --compound. A manifest (columns file, index, compound, smiles,

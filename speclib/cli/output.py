@@ -37,7 +37,8 @@ def print_lines(lines: Iterable[str]) -> None:
     import textwrap
 
     for line in lines:
-        for part in textwrap.wrap(plain(line), WIDTH, subsequent_indent="  ") or [""]:
+        hanging = " " * (len(line) - len(line.lstrip()) + 2)
+        for part in textwrap.wrap(plain(line), WIDTH, subsequent_indent=hanging) or [""]:
             click.echo(part)
 
 
@@ -55,6 +56,16 @@ def print_table(columns: Sequence[str], rows: Iterable[Sequence[object]], *, rig
         table.add_row(*(Text("" if cell is None else plain(cell)) for cell in row))
     console = Console(file=sys.stdout, width=WIDTH, highlight=False, no_color=not sys.stdout.isatty())
     console.print(table)
+
+
+def show_disagreements(neighbours: Iterable[Any], most: int) -> None:
+    """What speaks against each neighbour, a line each, at most `most` points."""
+    print_lines(["What disagrees"])
+    for n in neighbours:
+        words = "; ".join(n.disagreements[:most]) or "nothing above 5 % of the base peak"
+        more = f"; and {len(n.disagreements) - most} more" if len(n.disagreements) > most else ""
+        print_lines([f"  {n.rank} {n.compound.name}: {words}{more}"])
+    print_lines([""])
 
 
 def number(value: float | None, digits: int = 3) -> str:

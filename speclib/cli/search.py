@@ -7,7 +7,7 @@ from typing import Any
 import click
 
 from speclib.cli.options import json_option, open_library, query_options, read_options, reading_options
-from speclib.cli.output import CAUTION, number, print_json, print_lines, print_table, talk
+from speclib.cli.output import CAUTION, number, print_json, print_lines, print_table, show_disagreements, talk
 
 
 @click.command()
@@ -42,7 +42,7 @@ from speclib.cli.output import CAUTION, number, print_json, print_lines, print_t
 @reading_options
 @json_option
 @click.pass_context
-def search(ctx: click.Context, target: str, as_json: bool, **values: Any) -> None:
+def search(ctx: click.Context, /, target: str, as_json: bool, **values: Any) -> None:
     """Find the references nearest to an unknown: the spectrum in FILE, or a stored SPECTRUM by its number."""
     from speclib.cli.progress import progress
     from speclib.search.exact import SearchSettings
@@ -93,7 +93,7 @@ def _show(result: Any) -> None:
         ]
     )
     print_table(
-        ("rank", "compound", "formula", "simil.", "reverse", "peaks", "dM", "dRI", "what disagrees"),
+        ("rank", "compound", "formula", "simil.", "reverse", "peaks", "dM", "dRI"),
         (
             (
                 n.rank,
@@ -104,12 +104,13 @@ def _show(result: Any) -> None:
                 n.matched_peaks,
                 "-" if n.mass_difference is None else f"{n.mass_difference:+g}",
                 "-" if n.ri_difference is None else f"{n.ri_difference:+.0f}",
-                "; ".join(n.disagreements[:3]) or "nothing above 5 % of the base peak",
             )
             for n in result.neighbours
         ),
         right=("rank", "simil.", "reverse", "peaks", "dM", "dRI"),
     )
+    if result.neighbours:
+        show_disagreements(result.neighbours, 4)
     for remark in result.remarks:
         talk(f"Note: {remark}.")
     talk(CAUTION)

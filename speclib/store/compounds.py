@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import json
 import re
 import sqlite3
 from collections.abc import Iterable
@@ -18,12 +19,14 @@ _SELECT = (
 
 
 def _compounds(connection: sqlite3.Connection, where: str = "", values: Iterable[object] = ()) -> list[Compound]:
-    rows = connection.execute(f"{_SELECT}{where} ORDER BY c.id", tuple(values)).fetchall()
+    """Compounds that meet a condition of this module, by id, with their names."""
+    given = tuple(values)
     names: dict[int, dict[str, list[str]]] = {}
-    ids = {row["id"] for row in rows}
-    wanted = "" if len(ids) != 1 else f"WHERE compound_id = {next(iter(ids))} "
-    for row in connection.execute(f"SELECT compound_id, kind, name FROM compound_names {wanted}ORDER BY id"):  # noqa: S608
+    chosen = f"SELECT c.id FROM compounds c LEFT JOIN structures s ON s.id = c.structure_id {where}"  # noqa: S608
+    query = f"SELECT compound_id, kind, name FROM compound_names WHERE compound_id IN ({chosen}) ORDER BY id"  # noqa: S608
+    for row in connection.execute(query, given):
         names.setdefault(row["compound_id"], {}).setdefault(row["kind"], []).append(row["name"])
+    rows = connection.execute(f"{_SELECT}{where} ORDER BY c.id", given)
     return [_compound(row, names.get(row["id"], {})) for row in rows]
 
 
@@ -58,9 +61,11 @@ def list_compounds(connection: sqlite3.Connection) -> list[Compound]:
     return _compounds(connection)
 
 
-def compounds_by_id(connection: sqlite3.Connection) -> dict[int, Compound]:
-    """All compounds, by id."""
-    return {compound.id: compound for compound in _compounds(connection)}
+def compounds_by_id(connection: sqlite3.Connection, ids: Iterable[int]) -> dict[int, Compound]:
+    """The compounds of these ids that exist, by id."""
+    wanted = json.dumps(sorted(set(ids)))
+    found = _compounds(connection, "WHERE c.id IN (SELECT value FROM json_each(?))", (wanted,))
+    return {compound.id: compound for compound in found}
 
 
 def find_compounds(connection: sqlite3.Connection, text: str) -> list[Compound]:

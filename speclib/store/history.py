@@ -29,11 +29,11 @@ def recent_events(connection: sqlite3.Connection, limit: int | None = None) -> l
 
 
 def events_of_row(connection: sqlite3.Connection, row_uid: str) -> list[HistoryEntry]:
-    """Events that touched a row or a row that names it in its key, newest first, with the records before and after."""
+    """Events that touched a row or one that points to it (its assignments, say), newest first, with both records."""
     rows = connection.execute(
         "SELECT e.*, c.table_name, c.row_uid, c.before, c.after FROM event_changes c "
         "JOIN events e ON e.id = c.event_id "
-        "WHERE c.row_uid = ?1 OR c.row_uid LIKE ?1 || '|%' ORDER BY e.id DESC, c.id",
+        "WHERE c.row_uid = ?1 OR instr(ifnull(c.after, c.before), '\"' || ?1 || '\"') > 0 ORDER BY e.id DESC, c.id",
         (row_uid,),
     ).fetchall()
     by_event: dict[int, tuple[Event, list[dict[str, Any]]]] = {}

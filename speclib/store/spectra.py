@@ -38,7 +38,7 @@ def _entries(connection: sqlite3.Connection, where: str, values: Iterable[object
         f"SELECT p.*, f.file_name FROM spectra p LEFT JOIN sources f ON f.id = p.source_id WHERE {where} ORDER BY p.id",  # noqa: S608 (conditions from this module)
         tuple(values),
     ).fetchall()
-    compounds = compounds_by_id(connection) if any(row["compound_id"] for row in rows) else {}
+    compounds = compounds_by_id(connection, (row["compound_id"] for row in rows if row["compound_id"] is not None))
     return [
         LibrarySpectrum(
             row["id"],

@@ -191,7 +191,7 @@ def add_compound(library: Library, new: NewCompound, *, analyst: str | None) -> 
         compound_id = write_compound(transaction, checked)
         transaction.detail = {"compound": checked.new.name, "formula": checked.molecular_formula}
     with library.reading() as connection:
-        return compounds_by_id(connection)[compound_id]
+        return compounds_by_id(connection, [compound_id])[compound_id]
 
 
 def summarize_compounds(library: Library, *, class_name: str | None = None) -> list[CompoundSummary]:

@@ -228,10 +228,10 @@ def _store(
             imported=True,
         )
     status = order.row.status.value if compound else Role.UNKNOWN.value
-    remark = None
+    name_remark = None
     if compound and order.row.compound and order.row.compound.name.casefold() != compound.name.casefold():
-        remark = f"the structure of {order.row.compound.name} is held under the name {compound.name}"
-    return _taken(found, spectrum_id, compound, status, tuple(findings), remark=remark)
+        name_remark = f"the structure of {order.row.compound.name} is held under the name {compound.name}"
+    return _taken(found, spectrum_id, compound, status, tuple(findings), remark=name_remark)
 
 
 def _compound(transaction: WriteTransaction, order: _Order) -> Compound | None:
@@ -239,7 +239,18 @@ def _compound(transaction: WriteTransaction, order: _Order) -> Compound | None:
     connection = transaction.connection
     if order.compound and order.compound.structure:
         held = find_by_inchikey(connection, order.compound.structure.inchikey)
-        return held or compounds_by_id(connection)[write_compound(transaction, order.compound)]
+        if held is None:
+            return _new_compound(transaction, order.compound)
+        name = order.compound.new.name
+        other = next((c for c in find_compounds(connection, name) if c.id != held.id), None)
+        if other is not None:
+            raise RefusedError(
+                f"{name} is held already as compound {other.id} with the structure {other.structure.smiles}"
+                if other.structure
+                else f"{name} is held already as compound {other.id} without a structure",
+                f"the SMILES given is that of {held.name}; correct one of the two",
+            )
+        return held
     name = order.compound.new.name if order.compound else order.existing_name
     if name is None:
         return None
@@ -249,8 +260,13 @@ def _compound(transaction: WriteTransaction, order: _Order) -> Compound | None:
     if found:
         raise RefusedError(f"{name!r} means {len(found)} compounds", "give the SMILES")
     if order.compound:
-        return compounds_by_id(connection)[write_compound(transaction, order.compound)]
+        return _new_compound(transaction, order.compound)
     raise RefusedError(f"the library holds no compound {name!r} yet", "give its SMILES in the column smiles")
+
+
+def _new_compound(transaction: WriteTransaction, checked: CheckedCompound) -> Compound:
+    compound_id = write_compound(transaction, checked)
+    return compounds_by_id(transaction.connection, [compound_id])[compound_id]
 
 
 def _held(same: Sequence[LibrarySpectrum], compound: Compound | None) -> LibrarySpectrum | None:

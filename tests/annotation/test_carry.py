@@ -1,0 +1,207 @@
+"""Carry on small invented spectra whose chemistry is plain to see."""
+
+from __future__ import annotations
+
+from dataclasses import replace
+
+import pytest
+
+from speclib.annotation.carry import Donor, Unknown, carry_assignments
+from speclib.annotation.checks import DONORS, FORMULA, ISOTOPES, LOSS, MASS, PARITY
+from speclib.chemistry.formula import Formula, parse_formula
+from speclib.model.assignment import Assignment, AssignmentOrigin, AssignmentState, Parity, Route
+from speclib.model.compound import Compound, Structure
+from speclib.model.entry import LibrarySpectrum, Role, Status
+from speclib.model.results import Proposal
+from speclib.model.spectrum import MassAccuracy, Measurement, Spectrum
+from speclib.search.exact import SearchSettings, search_rows
+from speclib.search.rows import Comparable, ReferenceRow, reference_row
+from speclib.similarity.scores import Measure
+
+Ions = list[tuple[float, str, str]]
+
+
+def reference(number: int, name: str, formula: str, peaks: dict[float, float]) -> ReferenceRow:
+    f = parse_formula(formula)
+    structure = Structure(
+        name, f"{'A' * 13}{chr(65 + number)}-UHFFFAOYSA-N", name, formula, f.nominal_mass, f.exact_mass
+    )
+    compound = Compound(number, f"c{number}", name, structure, formula)
+    spectrum = Spectrum(sorted(peaks), [peaks[m] for m in sorted(peaks)])
+    return reference_row(LibrarySpectrum(number, f"s{number}", Role.REFERENCE, Status.CONFIRMED, spectrum, compound))
+
+
+def accepted(row: ReferenceRow, ions: Ions) -> tuple[Assignment, ...]:
+    molecule = row.comparable.formula or Formula()
+    made = []
+    for number, (mz, formula, mechanism) in enumerate(ions, start=1):
+        ion = parse_formula(formula)
+        made.append(
+            Assignment(
+                row.entry.id * 100 + number,
+                f"a{row.entry.id}-{number}",
+                row.entry.id,
+                0,
+                mz,
+                formula,
+                str(molecule - ion),
+                mechanism,
+                Parity(ion.ion_parity),
+                AssignmentOrigin.MANUAL,
+                AssignmentState.ACCEPTED,
+                accepted_how="individually",
+            )
+        )
+    return tuple(made)
+
+
+HEXANONE = reference(1, "2-hexanone", "C6H12O", {29: 15, 41: 15, 43: 100, 57: 17, 58: 55, 85: 7, 100: 8})
+HEXANONE_IONS: Ions = [
+    (43, "C2H3O", "alpha-cleavage"),
+    (58, "C3H6O", "McLafferty rearrangement"),
+    (85, "C5H9O", "alpha-cleavage"),
+    (100, "C6H12O", "molecular ion"),
+]
+OCTANONE = {29.0: 10.0, 41.0: 15.0, 43.0: 100.0, 58.0: 75.0, 59.0: 12.0, 71.0: 12.0, 113.0: 4.0, 128.0: 5.0}
+
+
+def carried(
+    peaks: dict[float, float],
+    formula: str | None,
+    mass: int | None,
+    donors: list[tuple[ReferenceRow, Ions]],
+    accuracy: MassAccuracy = MassAccuracy.UNIT,
+    measurement: Measurement | None = None,
+) -> tuple[list[Proposal], list[Proposal]]:
+    spectrum = Spectrum(sorted(peaks), [peaks[m] for m in sorted(peaks)], accuracy, measurement or Measurement())
+    molecule = parse_formula(formula) if formula else None
+    query = Comparable(spectrum, molecule, mass, molecule.exact_mass if molecule else None)
+    settings = SearchSettings(
+        measure=Measure.SHIFTED if mass else Measure.COSINE, min_similarity=0.1, min_matched=1, top=None
+    )
+    rows = [row for row, _ in donors]
+    found = search_rows(query, rows, settings)
+    ions = {row.entry.id: ions for row, ions in donors}
+    by_id = {row.entry.id: row for row in rows}
+    made = [
+        Donor(n, by_id[n.spectrum_id].comparable, accepted(by_id[n.spectrum_id], ions[n.spectrum_id])) for n in found
+    ]
+    return carry_assignments(Unknown(query, mass, molecule), made)
+
+
+def at(proposals: list[Proposal], mz: float) -> dict[str, Proposal]:
+    return {p.formula: p for p in proposals if p.mz == mz}
+
+
+def check(proposal: Proposal, name: str) -> tuple[bool | None, str]:
+    found = next(c for c in proposal.checks if c.name == name)
+    return found.passed, found.detail
+
+
+def test_an_ion_without_the_changed_part_stays_and_one_with_it_moves() -> None:
+    proposals, _ = carried(OCTANONE, "C8H16O", 128, [(HEXANONE, HEXANONE_IONS)])
+    assert at(proposals, 58)["C3H6O"].route is Route.SAME_ION
+    moved = at(proposals, 113)
+    assert moved["C7H13O"].route is Route.SAME_LOSS
+    assert moved["C7H13O"].neutral_loss == "CH3"
+    assert at(proposals, 128)["C8H16O"].mechanism == "molecular ion"
+
+
+def test_every_proposal_names_its_donor_assignment_and_all_checks() -> None:
+    proposals, _ = carried(OCTANONE, "C8H16O", 128, [(HEXANONE, HEXANONE_IONS)])
+    for proposal in proposals:
+        assert proposal.donors
+        assert all(vote.assignment_uid.startswith("a1-") for vote in proposal.donors)
+        assert [c.name for c in proposal.checks] == [MASS, FORMULA, PARITY, LOSS, ISOTOPES, DONORS]
+        assert proposal.confidence_basis == "prior"
+
+
+def test_without_the_formula_same_loss_is_left_out() -> None:
+    proposals, refused = carried(OCTANONE, None, 128, [(HEXANONE, HEXANONE_IONS)])
+    assert {p.route for p in [*proposals, *refused]} == {Route.SAME_ION}
+    assert all(p.neutral_loss is None for p in proposals)
+    assert check(proposals[0], FORMULA)[0] is None
+
+
+def test_a_molecular_ion_of_a_donor_is_never_carried_as_a_fragment() -> None:
+    peaks = {**OCTANONE, 100.0: 6.0}
+    proposals, refused = carried(peaks, "C8H16O", 128, [(HEXANONE, HEXANONE_IONS)])
+    assert "C6H12O" not in at([*proposals, *refused], 100)
+
+
+def test_an_ion_that_the_molecule_cannot_hold_is_refused_by_the_formula() -> None:
+    proposals, refused = carried({43: 100, 58: 50, 128: 5}, "C9H20", 128, [(HEXANONE, HEXANONE_IONS)])
+    assert not at(proposals, 58)
+    assert at(refused, 58)["C3H6O"].refused_by == FORMULA
+    assert "C9H20" in check(at(refused, 58)["C3H6O"], FORMULA)[1]
+
+
+def test_an_isotope_satellite_is_refused_and_names_its_parent() -> None:
+    # m/z 93 is 8 % of m/z 92: 13C of C7H8 (7.6 %) accounts for nearly all of it.
+    donor = reference(2, "donor", "C8H10", {91: 100, 92: 60, 93: 5, 106: 30})
+    ions: Ions = [(91, "C7H7", "benzylic cleavage"), (92, "C7H8", "McLafferty rearrangement"), (93, "C7H9", "x")]
+    _, refused = carried({91: 20, 92: 100, 93: 8, 120: 20}, "C9H12", 120, [(donor, ions)])
+    satellite = at(refused, 93)["C7H9"]
+    assert satellite.refused_by == ISOTOPES
+    assert "m/z 92" in check(satellite, ISOTOPES)[1]
+
+
+def test_a_chlorine_ion_without_its_satellite_is_refused_only_when_it_should_show() -> None:
+    donor = reference(3, "donor", "C6H5Cl", {77: 60, 112: 100, 114: 32})
+    ions: Ions = [(112, "C6H5Cl", "x"), (77, "C6H5", "halogen loss")]
+    ions_as_fragment: Ions = [(112, "C6H5Cl", "ring fragmentation")]
+    bigger = reference(4, "bigger donor", "C7H7Cl", {112: 100, 114: 33, 126: 20})
+    peaks = {50.0: 1.0, 77.0: 60.0, 112.0: 100.0, 140.0: 5.0}
+    donors = [(donor, ions), (bigger, ions_as_fragment)]
+    _, refused = carried(peaks, "C8H9Cl", 140, donors)
+    assert at(refused, 112)["C6H5Cl"].refused_by == ISOTOPES
+    # Scanned only to 112, no satellite could be seen.
+    low = Measurement(mz_from=40, mz_to=112)
+    proposals, _ = carried(peaks, "C8H9Cl", 140, donors, measurement=low)
+    assert "C6H5Cl" in at(proposals, 112)
+
+
+def test_two_compositions_of_one_unit_mass_are_both_shown_and_share_the_vote() -> None:
+    alkane = reference(5, "hexane", "C6H14", {29: 40, 41: 60, 43: 75, 57: 100, 86: 15})
+    proposals, _ = carried(
+        {29: 30, 41: 50, 43: 100, 57: 40, 58: 20, 100: 5},
+        "C6H12O",
+        100,
+        [(HEXANONE, [(43, "C2H3O", "alpha-cleavage")]), (alkane, [(43, "C3H7", "sigma cleavage")])],
+    )
+    both = at(proposals, 43)
+    assert set(both) >= {"C2H3O", "C3H7"}
+    assert sum(p.confidence or 0 for p in both.values()) <= 1.0
+
+
+def test_replicates_of_a_donor_do_not_vote_twice() -> None:
+    twin = replace(HEXANONE, entry=replace(HEXANONE.entry, id=9, uid="s9"))
+    once, _ = carried(OCTANONE, "C8H16O", 128, [(HEXANONE, HEXANONE_IONS)])
+    twice, _ = carried(OCTANONE, "C8H16O", 128, [(HEXANONE, HEXANONE_IONS), (twin, HEXANONE_IONS)])
+    assert [(p.formula, p.confidence) for p in once] == [(p.formula, p.confidence) for p in twice]
+
+
+def test_an_implausible_loss_lowers_the_confidence_but_is_shown() -> None:
+    proposals, _ = carried({**OCTANONE, 118.0: 5.0, 85.0: 5.0}, "C8H16O", 128, [(HEXANONE, HEXANONE_IONS)])
+    assert all(check(p, LOSS)[0] for p in proposals)
+    fourteen, _ = carried({43: 100, 58: 50, 85: 10, 99: 20}, "C6H11O", 99, [(HEXANONE, HEXANONE_IONS)])
+    ion = at(fourteen, 85)["C5H9O"]
+    assert check(ion, LOSS) == (False, "a loss of CH2 (14) from the molecular ion is implausible")
+
+
+def test_accurate_mass_decides_between_compositions() -> None:
+    donor_ions: Ions = [(43, "C2H3O", "alpha-cleavage"), (58, "C3H6O", "McLafferty rearrangement")]
+    peaks = {43.0542: 100.0, 58.0413: 50.0, 128.1196: 5.0}
+    proposals, refused = carried(peaks, "C8H16O", 128, [(HEXANONE, donor_ions)], MassAccuracy.ACCURATE)
+    assert at(refused, 43.0542)["C2H3O"].refused_by == MASS
+    assert "C3H6O" in at(proposals, 58.0413)
+
+
+@pytest.mark.parametrize("formula", ["C8H16O", None])
+def test_carry_is_deterministic(formula: str | None) -> None:
+    runs = [carried(OCTANONE, formula, 128, [(HEXANONE, HEXANONE_IONS)]) for _ in range(2)]
+    assert runs[0] == runs[1]
+
+
+def test_no_donor_means_no_proposal() -> None:
+    assert carried({91: 100, 92: 60}, "C7H8", 92, []) == ([], [])
