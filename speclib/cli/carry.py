@@ -158,5 +158,5 @@ def show_proposals(proposals: Any, refused: Any) -> None:
 
 
 def _donors(proposal: Any) -> str:
-    names = list(dict.fromkeys(vote.compound_name for vote in proposal.donors))
+    names: list[str] = list(dict.fromkeys(vote.compound_name for vote in proposal.donors))
     return names[0] + (f" +{len(names) - 1}" if len(names) > 1 else "")

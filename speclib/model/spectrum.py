@@ -118,6 +118,17 @@ class Spectrum:
     measurement: Measurement = field(default_factory=Measurement)
     raw_fields: Mapping[str, str] = field(default_factory=dict)
 
+    @classmethod
+    def of(
+        cls,
+        mz: ArrayLike,
+        intensity: ArrayLike,
+        mass_accuracy: MassAccuracy = MassAccuracy.UNIT,
+        measurement: Measurement | None = None,
+    ) -> Spectrum:
+        """Make a spectrum from any two lists of numbers; errors as the constructor."""
+        return cls(_frozen(mz, "m/z"), _frozen(intensity, "intensity"), mass_accuracy, measurement or Measurement())
+
     def __post_init__(self) -> None:
         mz, intensity = _frozen(self.mz, "m/z"), _frozen(self.intensity, "intensity")
         _check_peaks(mz, intensity)

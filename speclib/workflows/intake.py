@@ -241,27 +241,30 @@ def _compound(transaction: WriteTransaction, order: _Order) -> Compound | None:
         held = find_by_inchikey(connection, order.compound.structure.inchikey)
         if held is None:
             return _new_compound(transaction, order.compound)
-        name = order.compound.new.name
-        other = next((c for c in find_compounds(connection, name) if c.id != held.id), None)
-        if other is not None:
-            raise RefusedError(
-                f"{name} is held already as compound {other.id} with the structure {other.structure.smiles}"
-                if other.structure
-                else f"{name} is held already as compound {other.id} without a structure",
-                f"the SMILES given is that of {held.name}; correct one of the two",
-            )
+        _require_name_free(find_compounds(connection, order.compound.new.name), held, order.compound.new.name)
         return held
-    name = order.compound.new.name if order.compound else order.existing_name
-    if name is None:
+    wanted = order.compound.new.name if order.compound else order.existing_name
+    if wanted is None:
         return None
-    found = find_compounds(connection, name)
+    found = find_compounds(connection, wanted)
     if len(found) == 1:
         return found[0]
     if found:
-        raise RefusedError(f"{name!r} means {len(found)} compounds", "give the SMILES")
+        raise RefusedError(f"{wanted!r} means {len(found)} compounds", "give the SMILES")
     if order.compound:
         return _new_compound(transaction, order.compound)
-    raise RefusedError(f"the library holds no compound {name!r} yet", "give its SMILES in the column smiles")
+    raise RefusedError(f"the library holds no compound {wanted!r} yet", "give its SMILES in the column smiles")
+
+
+def _require_name_free(named: Sequence[Compound], held: Compound, name: str) -> None:
+    """A structure that is held may come under another name, but not under the name of another compound."""
+    other = next((c for c in named if c.id != held.id), None)
+    if other is not None:
+        smiles = other.structure.smiles if other.structure else "no SMILES"
+        raise RefusedError(
+            f"{name} is held already as compound {other.id} ({smiles}), but the SMILES given is that of {held.name}",
+            "correct one of the two",
+        )
 
 
 def _new_compound(transaction: WriteTransaction, checked: CheckedCompound) -> Compound:

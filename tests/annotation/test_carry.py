@@ -27,7 +27,7 @@ def reference(number: int, name: str, formula: str, peaks: dict[float, float]) -
         name, f"{'A' * 13}{chr(65 + number)}-UHFFFAOYSA-N", name, formula, f.nominal_mass, f.exact_mass
     )
     compound = Compound(number, f"c{number}", name, structure, formula)
-    spectrum = Spectrum(sorted(peaks), [peaks[m] for m in sorted(peaks)])
+    spectrum = Spectrum.of(sorted(peaks), [peaks[m] for m in sorted(peaks)])
     return reference_row(LibrarySpectrum(number, f"s{number}", Role.REFERENCE, Status.CONFIRMED, spectrum, compound))
 
 
@@ -73,7 +73,7 @@ def carried(
     accuracy: MassAccuracy = MassAccuracy.UNIT,
     measurement: Measurement | None = None,
 ) -> tuple[list[Proposal], list[Proposal]]:
-    spectrum = Spectrum(sorted(peaks), [peaks[m] for m in sorted(peaks)], accuracy, measurement or Measurement())
+    spectrum = Spectrum.of(sorted(peaks), [peaks[m] for m in sorted(peaks)], accuracy, measurement or Measurement())
     molecule = parse_formula(formula) if formula else None
     query = Comparable(spectrum, molecule, mass, molecule.exact_mass if molecule else None)
     settings = SearchSettings(

@@ -11,7 +11,7 @@ from speclib.model.assignment import Parity
 from speclib.model.spectrum import MassAccuracy, Spectrum
 from speclib.search.rows import Comparable
 
-ACETONE = Comparable(Spectrum([15, 43, 58], [20, 100, 40]), parse_formula("C3H6O"), 58)
+ACETONE = Comparable(Spectrum.of([15, 43, 58], [20, 100, 40]), parse_formula("C3H6O"), 58)
 
 
 def test_the_loss_follows_from_the_formula() -> None:
@@ -41,7 +41,7 @@ def test_what_does_not_fit_is_said(mz: float, formula: str, loss: str | None, wo
 
 
 def test_an_ion_without_room_for_its_hydrogens_is_refused() -> None:
-    target = Comparable(Spectrum([24], [1]), parse_formula("CH12"), 24)
+    target = Comparable(Spectrum.of([24], [1]), parse_formula("CH12"), 24)
     with pytest.raises(InvalidFormulaError, match="too many hydrogens"):
         check_manual_assignment(target, mz=24, formula="CH12", neutral_loss=None, mechanism="x")
 
@@ -52,14 +52,14 @@ def test_a_mechanism_is_required() -> None:
 
 
 def test_a_compound_without_formula_needs_the_loss() -> None:
-    target = Comparable(Spectrum([43], [1]), None, None)
+    target = Comparable(Spectrum.of([43], [1]), None, None)
     with pytest.raises(InvalidValueError, match="give the neutral loss"):
         check_manual_assignment(target, mz=43, formula="C2H3O", neutral_loss=None, mechanism="x")
 
 
 def test_accurate_peaks_are_found_within_twenty_millidalton_and_checked() -> None:
     target = Comparable(
-        Spectrum([43.0178, 43.0542], [5, 10], MassAccuracy.ACCURATE), parse_formula("C6H12O"), 100, 100.0888
+        Spectrum.of([43.0178, 43.0542], [5, 10], MassAccuracy.ACCURATE), parse_formula("C6H12O"), 100, 100.0888
     )
     assert find_peak(target, 43.053) == 1
     with pytest.raises(InvalidValueError, match="no peak at m/z"):
@@ -69,5 +69,5 @@ def test_accurate_peaks_are_found_within_twenty_millidalton_and_checked() -> Non
 
 
 def test_a_unit_mass_peak_is_found_by_its_whole_number() -> None:
-    target = Comparable(Spectrum([43.1, 57.1, 71.1], [5, 10, 3]), None, None)
+    target = Comparable(Spectrum.of([43.1, 57.1, 71.1], [5, 10, 3]), None, None)
     assert find_peak(target, 57) == 1

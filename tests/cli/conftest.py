@@ -72,8 +72,9 @@ def speclib(tmp_path: Path, monkeypatch: pytest.MonkeyPatch, capsys: pytest.Capt
         return datetime(2026, 1, 1, 8, 0, tzinfo=UTC) + timedelta(seconds=next(looks))
 
     for function in (Library.__init__, Library.create.__func__):  # type: ignore[attr-defined]
-        monkeypatch.setitem(function.__kwdefaults__, "clock", clock)
-        monkeypatch.setitem(function.__kwdefaults__, "new_uid", lambda: f"{next(made):032x}")
+        defaults: dict[str, Any] = function.__kwdefaults__ or {}
+        monkeypatch.setitem(defaults, "clock", clock)
+        monkeypatch.setitem(defaults, "new_uid", lambda: f"{next(made):032x}")
 
     def call(*args: object) -> Outcome:
         capsys.readouterr()

@@ -188,7 +188,7 @@ def test_a_library_from_a_newer_version_is_refused_and_untouched(speclib: Any, l
 def test_two_writers_at_once_the_second_is_told(speclib: Any, library: Path, monkeypatch: pytest.MonkeyPatch) -> None:
     from speclib.store.library import Library
 
-    monkeypatch.setitem(Library.__init__.__kwdefaults__, "timeout_s", 0.05)
+    monkeypatch.setitem(Library.__init__.__kwdefaults__ or {}, "timeout_s", 0.05)
     other = sqlite3.connect(library, isolation_level=None)
     other.execute("BEGIN IMMEDIATE")
     refused(speclib(*L, "confirm", "2", "--standard", "lot 9", *BY), "another process", "try again")

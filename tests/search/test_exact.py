@@ -33,7 +33,7 @@ def row(
             f"s{number}",
             Role.REFERENCE,
             Status.CONFIRMED,
-            Spectrum(sorted(peaks), [peaks[m] for m in sorted(peaks)], accuracy, measurement or Measurement()),
+            Spectrum.of(sorted(peaks), [peaks[m] for m in sorted(peaks)], accuracy, measurement or Measurement()),
             Compound(which, f"c{which}", f"compound {which}", structure, formula),
         )
     )
@@ -44,7 +44,7 @@ OTHER = {43.0: 20.0, 57.0: 100.0, 85.0: 7.0, 100.0: 30.0}
 
 
 def query(peaks: dict[float, float], mass: int | None = None, measurement: Measurement | None = None) -> Comparable:
-    spectrum = Spectrum(sorted(peaks), [peaks[m] for m in sorted(peaks)], measurement=measurement or Measurement())
+    spectrum = Spectrum.of(sorted(peaks), [peaks[m] for m in sorted(peaks)], measurement=measurement or Measurement())
     return Comparable(spectrum, None, mass)
 
 
@@ -100,7 +100,7 @@ def test_reverse_ranking_forgives_what_only_the_unknown_has() -> None:
 def test_accurate_spectra_are_compared_as_measured_and_mixed_pairs_on_whole_numbers() -> None:
     accurate = {43.0178: 100.0, 58.0413: 55.0, 85.0648: 7.0}
     moved = {mz + 0.02: height for mz, height in accurate.items()}
-    unknown = Comparable(Spectrum(list(moved), list(moved.values()), MassAccuracy.ACCURATE), None, None)
+    unknown = Comparable(Spectrum.of(list(moved), list(moved.values()), MassAccuracy.ACCURATE), None, None)
     reference = row(1, accurate, accuracy=MassAccuracy.ACCURATE)
     narrow = SearchSettings(tolerance=Tolerance(0.005, "da"))
     assert search_rows(unknown, [reference], narrow) == []
