@@ -28,6 +28,8 @@ class Tolerance:
     unit: Literal["da", "ppm"]
 
     def __post_init__(self) -> None:
+        if self.unit not in ("da", "ppm"):
+            raise InvalidValueError(f"a tolerance cannot be given in {self.unit!r}", "use da or ppm")
         if not 0.0 <= self.value < float("inf"):
             raise InvalidValueError(f"a tolerance of {self.value} {self.unit} is not possible", "give 0 or more")
 

@@ -14,10 +14,11 @@ from functools import cached_property, lru_cache
 from speclib.chemistry.elements import ELECTRON_MASS, ELEMENTS
 from speclib.errors import InvalidFormulaError
 
-_TOKEN = re.compile(r"([A-Z][a-z]?)(\d*)|(\()|\)(\d*)")
+_TOKEN = re.compile(r"([A-Z][a-z]?)([0-9]*)|(\()|\)([0-9]*)")
 _CHARGE = re.compile(r"[\u2022.\u00b7]?[+]?[\u2022.\u00b7]?$")
 MAX_FORMULA_LENGTH = 200
-MAX_ATOMS = 10_000
+MAX_ATOMS = 500
+"""C120H242, beyond any gas chromatograph, has 362; isotope patterns stay within float64 up to here."""
 
 
 def _hill_key(symbol: str, has_carbon: bool) -> tuple[int, str]:
@@ -153,6 +154,8 @@ def _checked_counts(text: str, packed: str) -> dict[str, int]:
             if len(stack) == 1:
                 raise InvalidFormulaError(f"{text!r} is not a formula: a bracket closes that was not opened")
             group = stack.pop()
+            if not group:
+                raise InvalidFormulaError(f"{text!r} is not a formula: a pair of brackets is empty")
             _add(stack[-1], group, _count(text, closing_number))
         position = match.end()
     if len(stack) != 1:

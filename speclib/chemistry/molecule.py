@@ -43,6 +43,9 @@ def molecule_facts(smiles: str) -> MoleculeFacts:
         raise InvalidStructureError("an empty text is not a SMILES")
     if len(text) > MAX_SMILES_LENGTH:
         raise InvalidStructureError(f"a SMILES of {len(text)} characters is not read")
+    if not text.isascii() or not text.isprintable() or " " in text:
+        # RDKit takes what follows a blank for a name: "C C" would become methane.
+        raise InvalidStructureError(f"{text!r} is not a SMILES: it holds a blank or a character outside ASCII")
     RDLogger.DisableLog("rdApp.*")  # type: ignore[attr-defined]
     molecule = Chem.MolFromSmiles(text)
     if molecule is None:

@@ -27,9 +27,8 @@ def subformulae_near_mz(parent: Formula, mz: float, tolerance_da: float) -> list
 def subformulae_of_nominal_mz(parent: Formula, nominal_mz: int) -> list[Formula]:
     """Compositions of singly charged ions of `parent` with the given nominal m/z, the parent included, in Hill order.
 
-    The mass defect of a composition is bounded by that of its elements (between -0.35 and 1.1 per mille of the mass
-    for all but the heaviest halides), so a window of 1 per mille below and 2 per mille above is searched and the
-    nominal mass then decides.
+    Above m/z 250 the mass defect of a composition lies within 2 per mille of its mass (Br2 -1.0, alkanes up to
+    1.2), below within 0.5, so that window is searched and the nominal mass then decides.
     """
     wanted = float(nominal_mz)
     found = _walk(parent, wanted, max(0.5, 2e-3 * wanted))

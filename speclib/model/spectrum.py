@@ -17,6 +17,8 @@ from speclib.errors import InvalidSpectrumError, InvalidValueError
 
 MAX_PEAKS = 200_000
 MAX_MZ = 10_000.0
+MAX_INTENSITY = 1e300
+"""Far above any detector; sums and percentages stay within float64."""
 
 
 class MassAccuracy(StrEnum):
@@ -79,12 +81,18 @@ class Measurement:
             "mz_to",
             "threshold",
             "electron_energy_ev",
+            "scan_rate_hz",
+            "amount_on_column_ng",
             "retention_time_s",
             "retention_index",
         ):
             value = getattr(self, name)
             if value is not None and not 0 <= value < float("inf"):
                 raise InvalidValueError(f"{name} cannot be {value}", "give a finite number of 0 or more")
+        if self.source_temperature_c is not None and not -273.15 <= self.source_temperature_c < float("inf"):
+            raise InvalidValueError(
+                f"source_temperature_c cannot be {self.source_temperature_c}", "give degrees Celsius"
+            )
 
     def with_overrides(self, **values: Any) -> Measurement:
         """A copy in which every value that is not None replaces the one held."""
@@ -97,7 +105,11 @@ class Measurement:
 
 
 def _frozen(values: ArrayLike, name: str) -> NDArray[np.float64]:
-    array = np.array(values, dtype=np.float64)
+    try:
+        # Adding 0 turns -0.0 into 0.0: equal spectra have equal bytes.
+        array = np.array(values, dtype=np.float64) + 0.0
+    except (TypeError, ValueError) as error:
+        raise InvalidSpectrumError(f"{name} must be a list of numbers ({error})") from error
     if array.ndim != 1:
         raise InvalidSpectrumError(f"{name} must be one list of numbers, not {array.ndim} dimensions")
     array.setflags(write=False)
@@ -163,7 +175,8 @@ class Spectrum:
     @cached_property
     def relative_intensity(self) -> NDArray[np.float64]:
         """Intensity relative to the base peak = 100."""
-        relative: NDArray[np.float64] = 100.0 * self.intensity / self.intensity.max()
+        # Divided first: 100 times a very large intensity would leave float64.
+        relative: NDArray[np.float64] = self.intensity / self.intensity.max() * 100.0
         relative.setflags(write=False)
         return relative
 
@@ -192,6 +205,8 @@ def _check_peaks(mz: NDArray[np.float64], intensity: NDArray[np.float64]) -> Non
             raise InvalidSpectrumError(f"{name} of peak {int(bad[0]) + 1} is {float(values[bad[0]])!r}")
     if mz[0] <= 0 or mz[-1] > MAX_MZ:
         raise InvalidSpectrumError(f"m/z must lie above 0 and at most at {MAX_MZ:g}")
+    if intensity.max() > MAX_INTENSITY:
+        raise InvalidSpectrumError(f"an intensity of {intensity.max():g} is above {MAX_INTENSITY:g}")
     steps = np.diff(mz)
     if np.any(steps <= 0):
         position = int(np.flatnonzero(steps <= 0)[0])
@@ -202,11 +217,21 @@ def _check_peaks(mz: NDArray[np.float64], intensity: NDArray[np.float64]) -> Non
 
 
 @dataclass(frozen=True)
+class ClaimedAssignment:
+    """What a file claims of one peak: its m/z, its intensity where given, and the assignment as written."""
+
+    mz: float
+    intensity: float | None
+    text: str
+
+
+@dataclass(frozen=True)
 class SourceSpectrum:
     """A spectrum as a reader found it: where it stood, what the file calls it, and what the reader noticed.
 
-    `title`, `formula`, `cas`, `smiles` and `inchikey` are verbatim claims of the file. `index` counts from 1.
-    `notes` are remarks of the reader (an assumed encoding, a corrected count) that become findings at intake.
+    `title`, `names`, `formula`, `cas`, `smiles`, `inchikey` and `assignments` are verbatim claims of the file. `index`
+    counts from 1. `notes` are remarks of the reader (an assumed encoding, a corrected count) that become findings at
+    intake.
     """
 
     file_name: str
@@ -218,6 +243,8 @@ class SourceSpectrum:
     smiles: str | None = None
     inchikey: str | None = None
     notes: tuple[str, ...] = ()
+    names: tuple[str, ...] = ()
+    assignments: tuple[ClaimedAssignment, ...] = ()
 
 
 @dataclass(frozen=True)

@@ -22,6 +22,10 @@ from speclib.units import UNIT_MASS_TOLERANCE, Tolerance
 Array = NDArray[np.float64]
 
 
+_ZERO_LOSS = 0.5
+"""Losses below this (Da) are none: half of H, the smallest. The molecular ion lies an electron mass below M."""
+
+
 class Measure(StrEnum):
     """The similarity measures."""
 
@@ -116,10 +120,9 @@ def neutral_loss_similarity(
     that one of the two could not have shown is left out.
     """
     shift = mass_difference(a, b)
-    half = tolerance.at(a.molecular_mass or 0.0) or 0.5
     (low_a, high_a), (low_b, high_b) = a.scanned, b.scanned
     low = max(low_a, low_b + shift)
-    high = min(high_a, high_b + shift, (a.molecular_mass or 0.0) - half)
+    high = min(high_a, high_b + shift, (a.molecular_mass or 0.0) - _ZERO_LOSS)
     return _score(a, b, (low, high), (low - shift, high - shift), weighting, tolerance, (shift,))
 
 
@@ -145,7 +148,10 @@ def _score(
     matched_a = float(sum(weight_a[p.a] ** 2 for p in pairs))
     norm_a, norm_b = float(np.dot(weight_a, weight_a)), float(np.dot(weight_b, weight_b))
     original = tuple(PeakPair(int(kept_a[p.a]), int(kept_b[p.b]), p.shifted) for p in pairs)
-    return Similarity(_ratio(product, norm_a * norm_b), _ratio(product, matched_a * norm_b), original, range_a, range_b)
+    forward = _ratio(product, norm_a * norm_b)
+    # The reverse score is never the lower one; rounding and underflow of tiny weights must not make it so.
+    reverse = max(forward, _ratio(product, matched_a * norm_b))
+    return Similarity(forward, reverse, original, range_a, range_b)
 
 
 def _ratio(product: float, squared_norm: float) -> float:
