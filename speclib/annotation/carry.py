@@ -25,6 +25,7 @@ RULES_VERSION = 1
 VOTE_POWER = 4
 """A donor votes with its similarity to this power: near relatives outweigh a crowd of distant ones. Chosen by
 leaving out each compound of a set of principal-peak tables in turn; powers 3 to 6 do equally well there."""
+SMALLEST_SHARE = 0.02
 
 
 @dataclass(frozen=True, eq=False)
@@ -77,7 +78,7 @@ def _collect(unknown: Unknown, donors: Sequence[Donor]) -> list[Candidate]:
         if mz not in place:
             return
         n = donor.neighbour
-        weight = n.similarity**VOTE_POWER
+        weight = n.similarity**VOTE_POWER * _side_share(donor, assignment, route) ** 0.5
         cast = DonorVote(assignment.id, assignment.uid, n.spectrum_id, n.compound.name, route, n.similarity, weight)
         votes.setdefault((mz, formula), {}).setdefault(f"{n.compound.uid}|{route}", (cast, assignment))
 
@@ -93,6 +94,18 @@ def _collect(unknown: Unknown, donors: Sequence[Donor]) -> list[Candidate]:
             if moved is not None and not (moved == formula and assignment.neutral_loss):
                 vote(moved.nominal_mass, moved, donor, assignment, Route.SAME_LOSS)
     return [_candidate(place[mz], mz, formula, list(cast.values())) for (mz, formula), cast in sorted(votes.items())]
+
+
+def _side_share(donor: Donor, assignment: Assignment, route: Route) -> float:
+    """Chance that the change lies where the route needs it, if it could lie anywhere in the donor.
+
+    For `same-loss` it has to lie in the ion (its part of the donor's mass), for `same-ion` in the neutral. Never 0, so
+    that no evidence is thrown away.
+    """
+    if not donor.comparable.nominal_mass:
+        return 0.5
+    ion = parse_formula(assignment.formula).nominal_mass / donor.comparable.nominal_mass
+    return max(SMALLEST_SHARE, ion if route is Route.SAME_LOSS else 1.0 - ion)
 
 
 def _same_loss_ion(unknown: Unknown, assignment: Assignment) -> Formula | None:

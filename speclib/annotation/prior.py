@@ -13,12 +13,12 @@ from speclib.chemistry.subformulae import subformulae_of_nominal_mz
 from speclib.model.results import Check
 
 PRIOR_BASIS = "prior"
-UNSEEN_VOTE = 0.1
+UNSEEN_VOTE = 0.06
 """Vote of a composition that no donor knows, when the molecular formula is not known either."""
-UNSEEN_VOTE_WITHIN_FORMULA = 0.05
+UNSEEN_VOTE_WITHIN_FORMULA = 0.03
 """The same when the formula is known and allows other compositions; it is 0 when it allows one only."""
-SINGLE_WITNESS_LIMIT = 0.9
-"""One compound alone does not make a composition surer than this while the formula allows others."""
+SINGLE_WITNESS_LIMIT, SEVERAL_WITNESSES_LIMIT = 0.75, 0.95
+"""One donor compound, or several, do not make a composition surer than this while the formula allows others."""
 IMPLAUSIBLE_LOSS_FACTOR = 0.5
 LOWEST, HIGHEST = 0.02, 0.97
 """A prior is never certain."""
@@ -39,7 +39,8 @@ def prior_confidence(
     if molecule is not None:
         only = len(subformulae_of_nominal_mz(molecule, candidate.mz)) == 1
         unseen = 0.0 if only else UNSEEN_VOTE_WITHIN_FORMULA
-        limit = SINGLE_WITNESS_LIMIT if candidate.compounds == 1 and not only else HIGHEST
+        if not only:
+            limit = SINGLE_WITNESS_LIMIT if candidate.compounds == 1 else SEVERAL_WITNESSES_LIMIT
     value = candidate.weight / (candidate.weight + unseen + sum(rival.weight for rival in live))
     if any(check.name == LOSS and check.passed is False for check in checks):
         value *= IMPLAUSIBLE_LOSS_FACTOR

@@ -16,6 +16,8 @@ from speclib.cli.options import (
 )
 from speclib.cli.output import CAUTION, number, print_json, print_lines, print_table, show_disagreements, talk
 
+SHOWN_DONORS = 5
+
 
 @click.command()
 @click.argument("target", metavar="FILE|SPECTRUM")
@@ -95,11 +97,15 @@ def _show(result: Any) -> None:
                     d.matched_peaks,
                     "-" if d.mass_difference is None else f"{d.mass_difference:+g}",
                 )
-                for d in result.donors
+                for d in result.donors[:SHOWN_DONORS]
             ),
             right=("rank", "simil.", "peaks", "dM"),
         )
-        show_disagreements(result.donors, 3)
+        show_disagreements(result.donors[:SHOWN_DONORS], 3)
+        if len(result.donors) > SHOWN_DONORS:
+            print_lines(
+                [f"... and {len(result.donors) - SHOWN_DONORS} donors less alike (all of them with --json).", ""]
+            )
     show_proposals(result.proposals, result.refused)
     for remark in result.remarks:
         talk(f"Note: {remark}.")

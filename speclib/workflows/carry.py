@@ -25,6 +25,8 @@ from speclib.workflows.search import reference_rows
 
 DEFAULT_MIN_SIMILARITY = 0.3
 DEFAULT_MOST_DONORS = 20
+WEAK_SIMILARITY = 0.5
+"""Below this the best donor is hardly a relative; common practice, no source."""
 
 
 @dataclass(frozen=True)
@@ -105,6 +107,11 @@ def _remarks(
         )
     elif not donors:
         remarks.append("none of the neighbours has accepted assignments, so nothing is carried; see `speclib assign`")
+    elif donors[0].neighbour.similarity < WEAK_SIMILARITY:
+        remarks.append(
+            f"no donor is a near relative (the best similarity is {donors[0].neighbour.similarity:.2f}): "
+            "take every proposal with great caution"
+        )
     if inferred and mass is not None:
         remarks.append(f"the molecular mass {mass} is inferred from the spectrum; give --mass if you know it")
     elif mass is None:
