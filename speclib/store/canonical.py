@@ -11,6 +11,7 @@ import json
 from typing import Any
 
 CANONICAL_VERSION = 1
+_ENCODER = json.JSONEncoder(sort_keys=True, separators=(",", ":"), ensure_ascii=False, allow_nan=False)
 
 
 def canonical_json(value: Any) -> str:
@@ -19,7 +20,7 @@ def canonical_json(value: Any) -> str:
     Raises:
         ValueError: NaN or an infinity, which JSON does not know.
     """
-    return json.dumps(value, sort_keys=True, separators=(",", ":"), ensure_ascii=False, allow_nan=False)
+    return _ENCODER.encode(value)
 
 
 def sha256_hex(data: str | bytes) -> str:

@@ -13,6 +13,7 @@ from speclib.model.entry import LibrarySpectrum
 from speclib.model.results import CarryResult, Check, DonorVote, Proposal, rounded
 from speclib.store.assignments import insert_carried
 from speclib.store.canonical import canonical_json
+from speclib.store.schema import LOCAL_IDS
 from speclib.store.spectra import get_spectrum
 from speclib.store.writing import WriteTransaction
 
@@ -146,7 +147,9 @@ def get_case(connection: sqlite3.Connection, case_id: int) -> Case:
     Raises:
         EntryNotFoundError: there is no case of that number.
     """
-    row = connection.execute("SELECT * FROM cases WHERE id = ?", (case_id,)).fetchone()
+    row = None
+    if case_id in LOCAL_IDS:
+        row = connection.execute("SELECT * FROM cases WHERE id = ?", (case_id,)).fetchone()
     if row is None:
         raise EntryNotFoundError(f"the library holds no case {case_id}", "see `speclib case list`")
     spectrum = get_spectrum(connection, row["spectrum_id"])

@@ -9,6 +9,7 @@ from collections.abc import Iterable
 
 from speclib.errors import AmbiguousEntryError, EntryNotFoundError
 from speclib.model.compound import Compound, Structure
+from speclib.store.schema import is_storable
 from speclib.store.writing import WriteTransaction
 
 _INCHIKEY = re.compile(r"[A-Z]{14}-[A-Z]{8}[SN][A-Z]-[A-Z]")
@@ -70,18 +71,38 @@ def compounds_by_id(connection: sqlite3.Connection, ids: Iterable[int]) -> dict[
 
 def find_compounds(connection: sqlite3.Connection, text: str) -> list[Compound]:
     """Compounds that `text` may mean: an id, an InChIKey, a CAS number, or a name or synonym without regard to case."""
-    wanted = text.strip()
-    if _INCHIKEY.fullmatch(wanted):
-        return _compounds(connection, "WHERE s.inchikey = ?", (wanted,))
+    wanted = " ".join(text.split())
+    if not is_storable(wanted):
+        return []
+    if _INCHIKEY.fullmatch(wanted.upper()):
+        return _compounds(connection, "WHERE s.inchikey = ?", (wanted.upper(),))
     named = _compounds(
         connection,
         "WHERE c.name = ?1 OR c.cas = ?1 OR c.id IN "
         "(SELECT compound_id FROM compound_names WHERE name = ?1 AND kind = 'synonym')",
         (wanted,),
     )
-    if not named and wanted.isascii() and wanted.isdigit() and len(wanted) < 18:
-        return _compounds(connection, "WHERE c.id = ?", (int(wanted),))
-    return named
+    if named:
+        return named
+    if not wanted.isascii():
+        # SQLite knows upper and lower case of ASCII letters only.
+        folded = wanted.casefold()
+        ids = [row["id"] for row in _all_names(connection) if row["name"].casefold() == folded]
+        return list(compounds_by_id(connection, ids).values())
+    return _compound_of_number(connection, wanted)
+
+
+def _compound_of_number(connection: sqlite3.Connection, wanted: str) -> list[Compound]:
+    if not (wanted.isascii() and wanted.isdigit() and len(wanted) < 18):
+        return []
+    return _compounds(connection, "WHERE c.id = ?", (int(wanted),))
+
+
+def _all_names(connection: sqlite3.Connection) -> sqlite3.Cursor:
+    return connection.execute(
+        "SELECT id, name FROM compounds UNION SELECT compound_id, name FROM compound_names WHERE kind = 'synonym' "
+        "ORDER BY id, name"
+    )
 
 
 def get_compound(connection: sqlite3.Connection, text: str) -> Compound:
@@ -89,18 +110,21 @@ def get_compound(connection: sqlite3.Connection, text: str) -> Compound:
 
     Raises:
         EntryNotFoundError: none; names that come near are suggested.
-        AmbiguousEntryError: several; they are listed.
+        AmbiguousEntryError: several, or the name of one is the number of another; they are listed.
     """
-    found = find_compounds(connection, text)
+    by_id = {c.id: c for c in (*find_compounds(connection, text), *_compound_of_number(connection, text.strip()))}
+    found = list(by_id.values())
     if len(found) == 1:
         return found[0]
     if found:
-        listed = ", ".join(f"{c.id} {c.name} ({c.formula})" for c in found[:10])
-        raise AmbiguousEntryError(f"{text!r} means several compounds: {listed}", "give the number")
+        listed = ", ".join(f"{c.id} {c.name} ({c.formula or 'formula unknown'})" for c in found[:10])
+        raise AmbiguousEntryError(f"{text!r} means several compounds: {listed}", "give the number, or the full name")
     import difflib
 
-    names = [row["name"] for row in connection.execute("SELECT name FROM compounds")]
-    near = difflib.get_close_matches(text, names, n=3)
+    names: dict[str, str] = {}
+    for row in _all_names(connection):
+        names.setdefault(row["name"].casefold(), row["name"])
+    near = [names[folded] for folded in difflib.get_close_matches(" ".join(text.split()).casefold(), names, n=3)]
     hint = f"did you mean {', '.join(near)}?" if near else "see `speclib compound list`"
     raise EntryNotFoundError(f"the library holds no compound {text!r}", hint)
 
@@ -150,6 +174,10 @@ def insert_compound(
         derivative=derivative,
     )
     for kind, texts in (("synonym", synonyms), ("class", classes)):
-        for text in dict.fromkeys(texts):
+        # Case does not tell names apart in the library.
+        once: dict[str, str] = {}
+        for text in texts:
+            once.setdefault(text.lower(), text)
+        for text in once.values():
             transaction.insert("compound_names", compound_id=compound_id, kind=kind, name=text)
     return compound_id

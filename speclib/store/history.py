@@ -7,6 +7,7 @@ import sqlite3
 from dataclasses import dataclass
 from typing import Any
 
+from speclib.store.canonical import canonical_json
 from speclib.store.trail import Event, event_from_row
 
 
@@ -33,8 +34,8 @@ def events_of_row(connection: sqlite3.Connection, row_uid: str) -> list[HistoryE
     rows = connection.execute(
         "SELECT e.*, c.table_name, c.row_uid, c.before, c.after FROM event_changes c "
         "JOIN events e ON e.id = c.event_id "
-        "WHERE c.row_uid = ?1 OR instr(ifnull(c.after, c.before), '\"' || ?1 || '\"') > 0 ORDER BY e.id DESC, c.id",
-        (row_uid,),
+        "WHERE c.row_uid = ?1 OR instr(c.after, ?2) > 0 OR instr(c.before, ?2) > 0 ORDER BY e.id DESC, c.id",
+        (row_uid, canonical_json(row_uid)),
     ).fetchall()
     by_event: dict[int, tuple[Event, list[dict[str, Any]]]] = {}
     for row in rows:

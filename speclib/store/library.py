@@ -16,6 +16,7 @@ from speclib.store.connection import (
     explained_errors,
     open_library,
     publish,
+    remove_temporary,
 )
 from speclib.store.trail import library_state
 from speclib.store.writing import UidSource, WriteTransaction, random_uid, writing
@@ -35,7 +36,7 @@ class Library:
         self.path = path
         self.clock = clock
         self.new_uid = new_uid
-        self._connection = open_library(path, timeout_s=timeout_s)
+        self._connection = open_library(path, timeout_s=timeout_s, clock=clock)
 
     @classmethod
     def create(
@@ -65,7 +66,7 @@ class Library:
                     transaction.insert("library", created=utc_text(clock()), four_eyes=0)
             publish(temporary, path)
         finally:
-            temporary.unlink(missing_ok=True)
+            remove_temporary(temporary)
         return cls(path, clock=clock, new_uid=new_uid)
 
     def __enter__(self) -> Library:
@@ -82,14 +83,23 @@ class Library:
 
     @contextmanager
     def reading(self) -> Iterator[sqlite3.Connection]:
-        """One consistent state of the library for the length of the block; nothing can be written inside."""
+        """One consistent state of the library for the length of the block; nothing can be written inside.
+
+        Inside another `reading` or `writing` block it reads the state of that block, which ends with that block.
+        """
         with explained_errors(self.path):
+            inside_another = self._connection.in_transaction
+            if inside_another:
+                yield self._connection
+                return
             self._connection.execute("PRAGMA query_only = ON")
-            self._connection.execute("BEGIN")
             try:
+                self._connection.execute("BEGIN")
                 yield self._connection
             finally:
-                self._connection.execute("COMMIT")
+                # SQLite may have ended the transaction by itself, after an I/O error say.
+                if self._connection.in_transaction:
+                    self._connection.execute("ROLLBACK")
                 self._connection.execute("PRAGMA query_only = OFF")
 
     @contextmanager
@@ -99,7 +109,7 @@ class Library:
         Raises:
             SignatureMissingError: nobody signs.
         """
-        if not (analyst or "").strip():
+        if not any(letter.isprintable() and not letter.isspace() for letter in analyst or ""):
             raise SignatureMissingError
         with writing(
             self._connection,

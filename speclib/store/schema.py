@@ -12,6 +12,17 @@ from dataclasses import dataclass, field
 APPLICATION_ID = 0x53504C42
 """Marks the file as a speclib library in the SQLite header."""
 SCHEMA_VERSION = 1
+LOCAL_IDS = range(1, 2**63)
+"""Numbers that a row can have; SQLite cannot even be asked for others."""
+
+
+def is_storable(text: str) -> bool:
+    """Whether a text is valid Unicode: a file name with bytes that could not be decoded is not."""
+    try:
+        text.encode()
+    except UnicodeEncodeError:
+        return False
+    return True
 
 
 @dataclass(frozen=True)
@@ -458,8 +469,35 @@ def create_tables_sql() -> str:
     return "\n".join(parts)
 
 
+_KEYS: dict[str, tuple[str, ...]] = {
+    "events": ("library_uid", "seq"),
+    "event_changes": ("id",),
+    **{table.name: table.key for table in AUDITED},
+}
+"""Columns by which the trail knows the rows of every guarded table."""
+
+
+def _held(name: str, key: tuple[str, ...]) -> str:
+    same = " AND ".join(f"{column} = new.{column}" for column in key)
+    return f"EXISTS (SELECT 1 FROM {name} WHERE {same})"  # noqa: S608 (names from this module)
+
+
+def _moved(columns: tuple[str, ...]) -> str:
+    # Binary, because the trail tells names apart that the table's collation does not.
+    return " OR ".join(f"new.{column} COLLATE BINARY IS NOT old.{column}" for column in columns)
+
+
+def trigger_names() -> list[str]:
+    """Names of all triggers."""
+    return [statement.split()[2] for statement in trigger_statements()]
+
+
 def trigger_statements() -> list[str]:
-    """All triggers, one list, because a table rebuild drops them silently: they are made anew after every migration."""
+    """All triggers, one list, because a table rebuild drops them silently: they are made anew after every migration.
+
+    They guard against accidents of any program that writes to the file. `INSERT OR REPLACE` deletes without firing
+    delete triggers, so that a row whose id or key is taken is refused before it comes in.
+    """
     made = [
         f"CREATE TRIGGER {name}_never_deleted BEFORE DELETE ON {name} "
         f"BEGIN SELECT RAISE(ABORT, 'rows of {name} are never deleted'); END"
@@ -478,6 +516,17 @@ def trigger_statements() -> list[str]:
             "release_rows",
         )
     ]
+    made += [
+        f"CREATE TRIGGER {name}_never_replaced BEFORE INSERT ON {name} "
+        f"WHEN {_held(name, ('id',))} OR {_held(name, key)} "
+        f"BEGIN SELECT RAISE(ABORT, 'this row of {name} is held already'); END"
+        for name, key in _KEYS.items()
+    ]
+    made += [
+        f"CREATE TRIGGER {name}_key_never_changes BEFORE UPDATE ON {name} WHEN {_moved(('id', *key))} "
+        f"BEGIN SELECT RAISE(ABORT, 'the key of a row of {name} never changes'); END"
+        for name, key in _KEYS.items()
+    ]
     made.append(
         "CREATE TRIGGER spectra_peaks_never_change BEFORE UPDATE OF mz, intensity, content_hash, peak_count ON spectra "
         "BEGIN SELECT RAISE(ABORT, 'peaks of a stored spectrum never change'); END"
@@ -487,7 +536,8 @@ def trigger_statements() -> list[str]:
         "BEGIN INSERT INTO changes (spectrum_id, operation) VALUES (new.id, 'insert'); END"
     )
     made.append(
-        "CREATE TRIGGER spectra_updated AFTER UPDATE OF status, compound_id, molecular_mass ON spectra "
+        "CREATE TRIGGER spectra_updated AFTER UPDATE OF role, status, compound_id, molecular_mass, mass_accuracy, "
+        "mz_from, mz_to, retention_index, phase_id ON spectra "
         "BEGIN INSERT INTO changes (spectrum_id, operation) VALUES (new.id, 'update'); END"
     )
     return made

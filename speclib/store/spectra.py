@@ -15,6 +15,7 @@ from speclib.model.finding import Finding, Severity
 from speclib.model.spectrum import MassAccuracy, Measurement, SourceFile, SourceSpectrum, Spectrum
 from speclib.store.canonical import canonical_json
 from speclib.store.compounds import compounds_by_id
+from speclib.store.schema import LOCAL_IDS, is_storable
 from speclib.store.writing import WriteTransaction
 
 _OWN_COLUMNS = ("mz_from", "mz_to", "retention_time_s", "retention_index")
@@ -62,7 +63,7 @@ def get_spectrum(connection: sqlite3.Connection, spectrum_id: int) -> LibrarySpe
     Raises:
         EntryNotFoundError: the library holds none of that number.
     """
-    found = _entries(connection, "p.id = ?", (spectrum_id,))
+    found = _entries(connection, "p.id = ?", (spectrum_id,)) if spectrum_id in LOCAL_IDS else []
     if not found:
         raise EntryNotFoundError(f"the library holds no spectrum {spectrum_id}", "see `speclib compound show NAME`")
     return found[0]
@@ -74,7 +75,9 @@ def find_spectrum_by_source(connection: sqlite3.Connection, file_name: str, inde
     Raises:
         EntryNotFoundError: none. AmbiguousEntryError: several; they are listed.
     """
-    found = _entries(connection, "f.file_name = ? AND (?2 IS NULL OR p.source_index = ?2)", (file_name, index))
+    found = []
+    if is_storable(file_name) and (index is None or index in LOCAL_IDS):
+        found = _entries(connection, "f.file_name = ?1 AND (?2 IS NULL OR p.source_index = ?2)", (file_name, index))
     where = f"{file_name}, spectrum {index}" if index is not None else file_name
     if not found:
         raise EntryNotFoundError(f"no spectrum of {where} is in the library", "read the file with `speclib intake`")
@@ -157,8 +160,14 @@ def insert_spectrum(
 
 
 def insert_findings(transaction: WriteTransaction, spectrum_id: int, findings: Iterable[Finding]) -> None:
-    """Record findings of a spectrum, each once."""
-    for finding in {(f.check, f.fingerprint): f for f in findings}.values():
+    """Record findings of a spectrum, each once; those that stand already are left as they are."""
+    held = transaction.connection.execute(
+        "SELECT check_name, fingerprint FROM findings WHERE spectrum_id = ?", (spectrum_id,)
+    )
+    known = {(row["check_name"], row["fingerprint"]) for row in held}
+    for key, finding in {(f.check, f.fingerprint): f for f in findings}.items():
+        if key in known:
+            continue
         transaction.insert(
             "findings",
             spectrum_id=spectrum_id,

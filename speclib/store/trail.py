@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import json
 import sqlite3
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import Any
 
 from speclib.store.canonical import CANONICAL_VERSION, canonical_json, sha256_hex
@@ -89,6 +89,35 @@ def event_from_row(row: sqlite3.Row) -> Event:
     )
 
 
+def write_event(connection: sqlite3.Connection, event: Event, changes: list[Change]) -> None:
+    """Add an event with its changes; its hash is computed here.
+
+    The detail is hashed as it will be read back, so that a key that is no text cannot change the order of the hashed
+    form.
+    """
+    event = replace(event, detail=json.loads(canonical_json(event.detail)))
+    connection.execute(
+        "INSERT INTO events (id, library_uid, seq, at, analyst, action, reason, detail, previous_hash, hash) "
+        "VALUES (?, ?, ?, ?, ?, ?, ?, ?, ?, ?)",
+        (
+            event.id,
+            event.library_uid,
+            event.seq,
+            event.at,
+            event.analyst,
+            event.action,
+            event.reason,
+            canonical_json(event.detail),
+            event.previous_hash,
+            event_hash(event, changes),
+        ),
+    )
+    connection.executemany(
+        "INSERT INTO event_changes (event_id, table_name, row_uid, before, after) VALUES (?, ?, ?, ?, ?)",
+        [(event.id, c.table, c.row_uid, c.before, c.after) for c in changes],
+    )
+
+
 def library_state(connection: sqlite3.Connection) -> str:
     """Hash of the library's newest own event: the state that every result cites ("" before the first event)."""
     row = connection.execute(
@@ -104,6 +133,7 @@ class RowKeys:
         self._connection = connection
         self._known: dict[tuple[str, int], str] = {}
         self._coming: dict[tuple[str, int], str] = {}
+        self._columns: dict[str, tuple[str, ...]] = {}
 
     def remember_event(self, event_id: int, library_uid: str, seq: int) -> None:
         """Tell the key of an event that is not written yet."""
@@ -119,7 +149,8 @@ class RowKeys:
             return self._coming[table, row_id]
         if (table, row_id) not in self._known:
             row = self._connection.execute(f"SELECT * FROM {table} WHERE id = ?", (row_id,)).fetchone()  # noqa: S608
-            self._known[table, row_id] = self.of_row(table, row)
+            # Only a damaged or tampered library has no such row; verification names it instead of failing.
+            self._known[table, row_id] = f"missing:{table}:{row_id}" if row is None else self.of_row(table, row)
         return self._known[table, row_id]
 
     def of_row(self, table: str, row: sqlite3.Row) -> str:
@@ -135,14 +166,15 @@ class RowKeys:
     def record(self, table: str, row: sqlite3.Row) -> str:
         """Canonical record of a row: local ids replaced by keys, blobs by their SHA-256."""
         spec = TABLES[table]
-        values: dict[str, Any] = {}
-        for column in spec.columns:
-            value = row[column]
-            if column == "id":
-                continue
-            if value is not None and column in spec.references:
-                value = self.of(spec.references[column], value)
-            elif isinstance(value, bytes):
-                value = f"sha256:{sha256_hex(value)}"
-            values[column] = value
+        if table not in self._columns:
+            # A library of an older schema lacks some columns of today.
+            held = set(row.keys())
+            self._columns[table] = tuple(c for c in spec.columns if c in held and c != "id")
+        values: dict[str, Any] = {column: row[column] for column in self._columns[table]}
+        for column, target in spec.references.items():
+            if values.get(column) is not None:
+                values[column] = self.of(target, values[column])
+        for column, value in values.items():
+            if isinstance(value, bytes):
+                values[column] = f"sha256:{sha256_hex(value)}"
         return canonical_json(values)

@@ -5,14 +5,16 @@ from __future__ import annotations
 import sqlite3
 from collections.abc import Iterator
 from dataclasses import dataclass
+from pathlib import Path
 from typing import Any
 
 from speclib.progress import SILENT, Progress
 from speclib.store.canonical import sha256_hex
-from speclib.store.schema import TABLES
+from speclib.store.schema import TABLES, trigger_names
 from speclib.store.trail import (
     FIRST_PREVIOUS_HASH,
     Change,
+    Event,
     RowKeys,
     event_from_row,
     event_hash,
@@ -51,9 +53,10 @@ class Verification:
 def verify_library(connection: sqlite3.Connection, progress: Progress = SILENT) -> Verification:
     """Recompute everything that the library claims of itself; call inside one read transaction.
 
-    Four parts, each reporting its first difference: SQLite's own integrity check, peak hashes, event chain, replay.
+    Five parts, each reporting its first difference: SQLite's own integrity check, the triggers that guard the rows,
+    peak hashes, event chain, replay.
     """
-    parts = (_sqlite_differences, _peak_differences, _chain_differences, _replay_differences)
+    parts = (_sqlite_differences, _guard_differences, _peak_differences, _chain_differences, _replay_differences)
     found: list[str] = []
     progress.start("verify", len(parts))
     try:
@@ -69,11 +72,24 @@ def verify_library(connection: sqlite3.Connection, progress: Progress = SILENT) 
 
 
 def _sqlite_differences(connection: sqlite3.Connection) -> Iterator[str]:
+    # SQLite takes what is missing of the last page for zeros.
+    pages, size = (connection.execute(f"PRAGMA {name}").fetchone()[0] for name in ("page_count", "page_size"))
+    file = connection.execute("SELECT file FROM pragma_database_list WHERE name = 'main'").fetchone()[0]
+    missing = pages * size - Path(file).stat().st_size if file else 0
+    if missing > 0:
+        yield f"the file is {missing} bytes too short"
     for (line,) in connection.execute("PRAGMA integrity_check(1)"):
         if line != "ok":
             yield f"SQLite's integrity check: {line}"
     for row in connection.execute("PRAGMA foreign_key_check"):
         yield f"a row of {row[0]} points to a row of {row[2]} that is missing"
+
+
+def _guard_differences(connection: sqlite3.Connection) -> Iterator[str]:
+    held = {name for (name,) in connection.execute("SELECT name FROM sqlite_master WHERE type = 'trigger'")}
+    for name in trigger_names():
+        if name not in held:
+            yield f"the guard {name} is missing from the library"
 
 
 def _peak_differences(connection: sqlite3.Connection) -> Iterator[str]:
@@ -86,16 +102,37 @@ def _chain_differences(connection: sqlite3.Connection) -> Iterator[str]:
     # Chains are per origin library: after a merge several stand here, each whole.
     ends: dict[str, tuple[str, int]] = {}
     for row in connection.execute("SELECT * FROM events ORDER BY id"):
-        event = event_from_row(row)
+        try:
+            event = event_from_row(row)
+        except ValueError:
+            yield f"event {row['seq']} ({row['action']}, {row['at']}) has a detail that is no JSON"
+            return
         previous, expected_seq = ends.get(event.library_uid, (FIRST_PREVIOUS_HASH, 1))
         name = f"event {event.seq} ({event.action}, {event.at})"
-        if event.seq != expected_seq:
+        if event.seq > expected_seq:
             yield f"event {expected_seq} is missing before {name}"
+        if event.seq < expected_seq:
+            yield f"{name} stands after an event that came later"
         if event.previous_hash != previous:
             yield f"{name} does not follow the event before it"
-        if event_hash(event, _changes_of(connection, event.id)) != event.hash:
+        if _hash(event, _changes_of(connection, event.id)) != event.hash:
             yield f"{name} does not give the hash recorded for it"
         ends[event.library_uid] = (event.hash, event.seq + 1)
+
+
+def _hash(event: Event, changes: list[Change]) -> str | None:
+    try:
+        return event_hash(event, changes)
+    except ValueError:
+        # An infinity, or text that is no Unicode: no event of ours has them.
+        return None
+
+
+def _record(keys: RowKeys, table: str, row: sqlite3.Row) -> str | None:
+    try:
+        return keys.record(table, row)
+    except ValueError:
+        return None
 
 
 def _changes_of(connection: sqlite3.Connection, event_id: int) -> list[Change]:
@@ -107,7 +144,7 @@ def _changes_of(connection: sqlite3.Connection, event_id: int) -> list[Change]:
 
 
 def _replay_differences(connection: sqlite3.Connection) -> Iterator[str]:
-    replayed: dict[tuple[str, str], str | None] = {}
+    replayed: dict[tuple[str, str], str] = {}
     query = (
         "SELECT e.seq, c.table_name, c.row_uid, c.before, c.after FROM event_changes c "
         "JOIN events e ON e.id = c.event_id ORDER BY c.id"
@@ -116,14 +153,17 @@ def _replay_differences(connection: sqlite3.Connection) -> Iterator[str]:
         place = (row["table_name"], row["row_uid"])
         if replayed.get(place) != row["before"]:
             yield f"event {row['seq']} starts from another state of {place[0]} {place[1]} than the one before it left"
-        replayed[place] = row["after"]
+        if row["after"] is None:
+            replayed.pop(place, None)
+        else:
+            replayed[place] = row["after"]
     keys = RowKeys(connection)
     for table in TABLES:
         for row in connection.execute(f"SELECT * FROM {table} ORDER BY id"):  # noqa: S608
             key = keys.of_row(table, row)
             if (table, key) not in replayed:
                 yield f"row {row['id']} of {table} stands in the library but no event made it"
-            elif replayed.pop((table, key)) != keys.record(table, row):
+            elif replayed.pop((table, key)) != _record(keys, table, row):
                 yield f"row {row['id']} of {table} is not what the events say"
     for table, key in replayed:
         yield f"the events made a row of {table} ({key}) that is not in the library"

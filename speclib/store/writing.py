@@ -15,11 +15,10 @@ from pathlib import Path
 from typing import Any
 
 from speclib.clock import Clock, utc_text
-from speclib.errors import RefusedError
-from speclib.store.canonical import canonical_json
+from speclib.errors import EntryNotFoundError, InvalidValueError, LibraryError, RefusedError
 from speclib.store.connection import explained_errors
 from speclib.store.schema import TABLES
-from speclib.store.trail import FIRST_PREVIOUS_HASH, Change, Event, RowKeys, event_hash
+from speclib.store.trail import FIRST_PREVIOUS_HASH, Change, Event, RowKeys, write_event
 
 UidSource = Callable[[], str]
 
@@ -39,7 +38,21 @@ class WriteTransaction:
         self._new_uid = new_uid
         self._keys = keys
         self._first_before: dict[tuple[str, int], str | None] = {}
+        self._ended = False
         self.abandoned = False
+
+    def end(self) -> None:
+        """Accept no more changes: `writing` is done with this transaction."""
+        self._ended = True
+
+    def require_open(self) -> None:
+        """Refuse a change that no event would cover: after the block, or after SQLite rolled back by itself.
+
+        Raises:
+            LibraryError: the transaction is over.
+        """
+        if self._ended or not self.connection.in_transaction:
+            raise LibraryError("a change came after the end of its transaction", "nothing of it was kept; try again")
 
     def abandon(self) -> None:
         """Leave the library as it was and write no event, because there turned out to be nothing to do."""
@@ -48,6 +61,7 @@ class WriteTransaction:
     @contextmanager
     def step(self) -> Iterator[None]:
         """A part that can fail alone: what it wrote is undone, the rest of the transaction goes on."""
+        self.require_open()
         before = dict(self._first_before)
         self.connection.execute("SAVEPOINT step")
         try:
@@ -62,13 +76,17 @@ class WriteTransaction:
         self.connection.execute("RELEASE step")
 
     def insert(self, table: str, **values: Any) -> int:
-        """Add a row and return its local id; a `uid` is made when the table has one."""
+        """Add a row and return its local id; a `uid` is made when the table has one.
+
+        Raises:
+            InvalidValueError: a text or a number that SQLite cannot hold.
+        """
         spec = TABLES[table]
         if "uid" in spec.columns and "uid" not in values:
             values["uid"] = self._new_uid()
         names = ", ".join(values)
         marks = ", ".join("?" * len(values))
-        cursor = self.connection.execute(
+        cursor = self._execute(
             f"INSERT INTO {table} ({names}) VALUES ({marks})",  # noqa: S608 (names from our own schema)
             tuple(values.values()),
         )
@@ -77,13 +95,24 @@ class WriteTransaction:
         return row_id
 
     def update(self, table: str, row_id: int, *, expected_rev: int | None = None, **values: Any) -> None:
-        """Change columns of a row; `rev` counts up where the table has one.
+        """Change columns of a row; `rev` counts up where the table has one. The columns of a row key never change.
 
         Raises:
+            EntryNotFoundError: there is no such row.
             RefusedError: `expected_rev` is given and somebody else changed the row since it was read.
+            InvalidValueError: a text or a number that SQLite cannot hold.
+            ValueError: the table has no `rev` to compare with `expected_rev`, or a column belongs to the row key.
         """
+        self.require_open()
+        spec = TABLES[table]
+        if not values.keys().isdisjoint({"id", *spec.key}):
+            raise ValueError(f"the trail knows rows of {table} by {', '.join(spec.key)}: these never change")
+        if expected_rev is not None and "rev" not in spec.columns:
+            raise ValueError(f"rows of {table} have no rev")
         row = self.connection.execute(f"SELECT * FROM {table} WHERE id = ?", (row_id,)).fetchone()  # noqa: S608
-        if "rev" in TABLES[table].columns:
+        if row is None:
+            raise EntryNotFoundError(f"the library holds no row {row_id} of {table}")
+        if "rev" in spec.columns:
             if expected_rev is not None and row["rev"] != expected_rev:
                 raise RefusedError(
                     f"row {row_id} of {table} was changed by somebody else meanwhile",
@@ -92,10 +121,15 @@ class WriteTransaction:
             values["rev"] = row["rev"] + 1
         self._first_before.setdefault((table, row_id), self._keys.record(table, row))
         assignments = ", ".join(f"{name} = ?" for name in values)
-        self.connection.execute(
+        self._execute(
             f"UPDATE {table} SET {assignments} WHERE id = ?",  # noqa: S608 (names from our own schema)
             (*values.values(), row_id),
         )
+
+    def _execute(self, statement: str, values: tuple[Any, ...]) -> sqlite3.Cursor:
+        self.require_open()
+        with _storable():
+            return self.connection.execute(statement, values)
 
     def changes(self) -> list[Change]:
         """The rows touched so far, in order of first touch, with their records before and now."""
@@ -104,6 +138,20 @@ class WriteTransaction:
             row = self.connection.execute(f"SELECT * FROM {table} WHERE id = ?", (row_id,)).fetchone()  # noqa: S608
             made.append(Change(table, self._keys.of_row(table, row), before, self._keys.record(table, row)))
         return made
+
+
+@contextmanager
+def _storable() -> Iterator[None]:
+    """Name a value that SQLite cannot hold."""
+    try:
+        yield
+    except UnicodeEncodeError as error:
+        raise InvalidValueError(
+            f"the text {error.object[:60]!a} is not valid Unicode and cannot be stored",
+            "rename the file or correct the text",
+        ) from error
+    except OverflowError as error:
+        raise InvalidValueError("a whole number is too large to be stored", "correct the number") from error
 
 
 @contextmanager
@@ -126,6 +174,7 @@ def writing(
     """
     with explained_errors(path):
         connection.execute("BEGIN IMMEDIATE")
+    transaction: WriteTransaction | None = None
     try:
         with explained_errors(path):
             last = connection.execute(
@@ -140,6 +189,7 @@ def writing(
             keys.remember_event(event_id, library["uid"], seq)
         with explained_errors(path):
             yield transaction
+            transaction.require_open()
             if transaction.abandoned:
                 connection.execute("ROLLBACK")
                 return
@@ -156,32 +206,13 @@ def writing(
                 last["hash"] if last else FIRST_PREVIOUS_HASH,
                 "",
             )
-            _write_event(connection, event, transaction.changes())
+            with _storable():
+                write_event(connection, event, transaction.changes())
             connection.execute("COMMIT")
     except BaseException:
         if connection.in_transaction:
             connection.execute("ROLLBACK")
         raise
-
-
-def _write_event(connection: sqlite3.Connection, event: Event, changes: list[Change]) -> None:
-    connection.execute(
-        "INSERT INTO events (id, library_uid, seq, at, analyst, action, reason, detail, previous_hash, hash) "
-        "VALUES (?, ?, ?, ?, ?, ?, ?, ?, ?, ?)",
-        (
-            event.id,
-            event.library_uid,
-            event.seq,
-            event.at,
-            event.analyst,
-            event.action,
-            event.reason,
-            canonical_json(event.detail),
-            event.previous_hash,
-            event_hash(event, changes),
-        ),
-    )
-    connection.executemany(
-        "INSERT INTO event_changes (event_id, table_name, row_uid, before, after) VALUES (?, ?, ?, ?, ?)",
-        [(event.id, c.table, c.row_uid, c.before, c.after) for c in changes],
-    )
+    finally:
+        if transaction is not None:
+            transaction.end()
