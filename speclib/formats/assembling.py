@@ -14,6 +14,8 @@ from speclib.formats.text_document import TextDocument
 from speclib.model.spectrum import MAX_MZ, MAX_PEAKS, MassAccuracy, Measurement, SourceSpectrum, Spectrum
 
 MAX_RAW_CHARACTERS = 1_000_000
+LOW_ENERGY_EV = 30.0
+"""Below, fragmentation falls off steeply: such spectra are not to be held against those of 70 eV."""
 _RANGE_MARGIN = 0.5
 """m/z; how far a peak may lie outside the stated range before it is remarked: unit m/z are rounded."""
 
@@ -42,6 +44,7 @@ class Labels:
 
     measurement: dict[str, Any] = field(default_factory=dict)
     claims: dict[str, str] = field(default_factory=dict)
+    names: list[str] = field(default_factory=list)
     mass_accuracy: MassAccuracy | None = None
     raw_fields: dict[str, str] = field(default_factory=dict)
     notes: list[str] = field(default_factory=list)
@@ -79,12 +82,21 @@ def assemble_spectrum(
         spectrum = Spectrum(mz, intensity, accuracy, measurement, labels.raw_fields)
     except (InvalidSpectrumError, InvalidValueError) as error:
         raise document.error(error.message, line=line, advice=error.advice or "check the file") from error
-    notes = (*document.notes, *labels.notes, *((note,) if note else ()), *_outside_range(spectrum))
+    notes = (
+        *document.notes,
+        *labels.notes,
+        *((note,) if note else ()),
+        *_kept_apart(measurement),
+        *_outside_range(spectrum),
+    )
     return SourceSpectrum(file_name=document.file_name, index=index, spectrum=spectrum, notes=notes, **_claims(labels))
 
 
 def _claims(labels: Labels) -> dict[str, Any]:
-    return {name: labels.claims.get(name) or None for name in ("title", "formula", "cas", "smiles", "inchikey")}
+    claims: dict[str, Any] = {
+        name: labels.claims.get(name) or None for name in ("title", "formula", "cas", "smiles", "inchikey")
+    }
+    return {**claims, "names": tuple(dict.fromkeys(labels.names))}
 
 
 def _check_values(document: TextDocument, rows: PeakRows, line: int) -> None:
@@ -94,7 +106,9 @@ def _check_values(document: TextDocument, rows: PeakRows, line: int) -> None:
         )
     if len(rows) > MAX_PEAKS:
         raise too_many_peaks(document, rows.line[MAX_PEAKS])
-    for mz, intensity, where in zip(rows.mz, rows.intensity, rows.line, strict=True):
+    all_mz, all_intensity = np.array(rows.mz), np.array(rows.intensity)
+    for at in np.flatnonzero(~((all_mz > 0) & (all_mz <= MAX_MZ)) | (all_intensity < 0)):
+        mz, intensity, where = rows.mz[at], rows.intensity[at], rows.line[at]
         if not 0 < mz <= MAX_MZ:
             raise document.error(
                 f"m/z {mz!r} must lie above 0 and at most at {MAX_MZ:g}",
@@ -129,18 +143,23 @@ def _refuse_doubled(document: TextDocument, mz: np.ndarray[Any, np.dtype[np.floa
         )
 
 
+def _kept_apart(measurement: Measurement) -> tuple[str, ...]:
+    """The remark on a spectrum that is no match for references of electron ionisation at 70 eV."""
+    kinds = {"CI": "chemical ionisation", "CI-": "chemical ionisation, negative ions", "EI-": "negative ions"}
+    what = kinds.get(measurement.ionisation or "", "")
+    energy = measurement.electron_energy_ev
+    if not what and energy is not None and energy < LOW_ENERGY_EV:
+        what = f"ionisation by electrons of {energy:g} eV"
+    return (f"this is {what}: it must not be mixed with 70 eV EI references",) if what else ()
+
+
 def _outside_range(spectrum: Spectrum) -> tuple[str, ...]:
     measured = spectrum.measurement
-    outside = [
-        float(mz)
-        for mz, intensity in zip(spectrum.mz, spectrum.intensity, strict=True)
-        if intensity > 0
-        and (
-            (measured.mz_from is not None and mz < measured.mz_from - _RANGE_MARGIN)
-            or (measured.mz_to is not None and mz > measured.mz_to + _RANGE_MARGIN)
-        )
-    ]
-    if not outside:
+    low = -np.inf if measured.mz_from is None else measured.mz_from - _RANGE_MARGIN
+    high = np.inf if measured.mz_to is None else measured.mz_to + _RANGE_MARGIN
+    mz = spectrum.mz
+    outside = mz[(spectrum.intensity > 0) & ((mz < low) | (mz > high))]
+    if not len(outside):
         return ()
     more = f" and {len(outside) - 1} more" if len(outside) > 1 else ""
     return (f"the peak at m/z {outside[0]:g}{more} lies outside the stated scanned range",)

@@ -12,7 +12,7 @@ from speclib.formats.assembling import PeakRows, assemble_spectrum, too_many_pea
 from speclib.formats.columns import Row, Table, find_table
 from speclib.formats.headings import find_columns, heading_in_comment, is_heading, separator_line
 from speclib.formats.measurement_labels import LabelLine, known_key, read_labels, split_label
-from speclib.formats.number_text import NumberTextError, parse_number
+from speclib.formats.number_text import NumberTextError, parse_number, parse_numbers
 from speclib.formats.options import DecimalMark, ReadOptions
 from speclib.formats.text_document import TextDocument, shown
 from speclib.model.spectrum import MAX_PEAKS, SourceSpectrum
@@ -113,6 +113,9 @@ def _checked_heading(document: TextDocument, number: int, text: str) -> Row:
 def _read_peaks(document: TextDocument, table: Table, mz: int, intensity: int) -> PeakRows:
     peaks = PeakRows()
     decimal = table.layout.decimal
+    columns = [parse_numbers([fields[at] for fields in table.fields], decimal) for at in (mz, intensity)]
+    if columns[0] is not None and columns[1] is not None:
+        return PeakRows(columns[0], columns[1], [row.line for row in table.rows])
     for row, fields in zip(table.rows, table.fields, strict=True):
         try:
             peaks.add(parse_number(fields[mz], decimal), parse_number(fields[intensity], decimal), row.line)

@@ -14,6 +14,9 @@ from dataclasses import dataclass, field
 from speclib.formats.text_document import TextDocument, shown, shown_name
 
 MAX_DEPTH = 20
+MAX_BLOCKS = 20_000
+MAX_LABEL = 200
+"""Characters of a label."""
 _DELETED = str.maketrans("", "", " \t-/_")
 _TITLE = re.compile(r"[ \t]*##[ \t]*TITLE[ \t]*=", re.IGNORECASE)
 _LABEL = re.compile(r"[ \t]*##[ \t]*[A-Za-z.$][^=:#]{0,80}=")
@@ -30,12 +33,16 @@ class Comment:
 
 @dataclass
 class Record:
-    """A labelled record: label as compared, label as written, body lines without comments, with their line numbers."""
+    """A labelled record: label as compared, label as written, body lines without comments, with their line numbers.
+
+    `derived` marks a record that does not stand in the file so, but follows from another (a list of NTUPLES).
+    """
 
     line: int
     label: str
     name: str
     body: list[tuple[int, str]] = field(default_factory=list)
+    derived: bool = False
 
     @property
     def heading(self) -> str:
@@ -46,6 +53,11 @@ class Record:
     def value(self) -> str:
         """The body as text, without blanks at both ends."""
         return "\n".join(text.strip() for _, text in self.body).strip()
+
+    @property
+    def unfolded(self) -> str:
+        """The value with folded lines joined: an equals sign at the end of a line says that the next continues it."""
+        return self.value.replace("=\n", "")
 
 
 @dataclass
@@ -75,7 +87,7 @@ def normalised_label(name: str) -> str:
 def is_jcamp(document: TextDocument) -> bool:
     """Whether a text is JCAMP-DX: its first written line is a labelled record, or some line opens a block."""
     first = next((line for line in document.lines if line.strip() and not line.lstrip().startswith("$$")), "")
-    return _LABEL.match(first) is not None or any(_TITLE.match(line) for line in document.lines)
+    return _LABEL.match(first) is not None or any("##" in line and _TITLE.match(line) for line in document.lines)
 
 
 def _items(document: TextDocument) -> Iterator[Record | Comment]:
@@ -103,6 +115,8 @@ def _items(document: TextDocument) -> Iterator[Record | Comment]:
             raise document.error(
                 f"the labelled record {shown(text.strip())} has no equals sign", line=number, advice=_AGAIN
             )
+        if len(name) > MAX_LABEL:
+            raise document.error(f"the label {shown(name)} is too long", line=number, advice=_AGAIN)
         record = Record(number, normalised_label(name), name.strip(), [(number, value)])
     if record is not None:
         yield record
@@ -117,10 +131,14 @@ def read_blocks(document: TextDocument) -> list[Block]:
     done: list[Block] = []
     stack: list[Block] = []
     waiting: list[Comment] = []
+    count = 0
     for item in _items(document):
         if isinstance(item, Comment):
             (stack[-1].comments if stack else waiting).append(item)
         elif item.label == "TITLE":
+            count += 1
+            if count > MAX_BLOCKS:
+                raise document.error(f"more than {MAX_BLOCKS} blocks", line=item.line, advice="split the file")
             _open(document, item, stack, done, waiting)
         elif item.label == "":
             if item.value:

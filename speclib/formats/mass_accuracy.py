@@ -24,7 +24,11 @@ ADVICE = "say it with --mass-accuracy unit or --mass-accuracy accurate"
 
 def written_decimals(mz: float) -> int:
     """Decimals of the shortest text that reads back to the same number."""
-    exponent = Decimal(repr(mz)).normalize().as_tuple().exponent
+    text = repr(mz)
+    if "e" not in text:
+        decimals = text.partition(".")[2]
+        return 0 if decimals == "0" else len(decimals)
+    exponent = Decimal(text).normalize().as_tuple().exponent
     return max(0, -exponent) if isinstance(exponent, int) else 0
 
 

@@ -23,11 +23,15 @@ class ValueTextError(ValueError):
 
 @dataclass(frozen=True)
 class Unit:
-    """Spellings of units with their factors to the unit kept; `bare` is that of a number without a unit, or None."""
+    """Spellings of units with their factors to the unit kept; `bare` is that of a number without a unit, or None.
+
+    `signed` says that a value below 0 can be.
+    """
 
     factors: Mapping[str, Decimal]
     advice: str
     bare: Decimal | None = None
+    signed: bool = False
 
 
 _ONE, _SIXTY = Decimal(1), Decimal(60)
@@ -37,7 +41,7 @@ TIME = Unit(
 )
 SECONDS = Unit(TIME.factors, TIME.advice, bare=_ONE)
 ENERGY = Unit({"ev": _ONE, "electronvolt": _ONE, "electron volts": _ONE}, "write it in eV", bare=_ONE)
-TEMPERATURE = Unit({"c": _ONE, "degc": _ONE, "deg c": _ONE, "celsius": _ONE}, "write it in C")
+TEMPERATURE = Unit({"c": _ONE, "degc": _ONE, "deg c": _ONE, "celsius": _ONE}, "write it in C", signed=True)
 AMOUNT = Unit(
     {"ng": _ONE, "pg": Decimal("0.001"), "ug": Decimal(1000), "\u00b5g": Decimal(1000), "\u03bcg": Decimal(1000)},
     "write the unit, pg, ng or ug",
@@ -50,7 +54,7 @@ MZ = Unit({"m/z": _ONE, "da": _ONE, "amu": _ONE, "u": _ONE}, "write a number", b
 def kept_unit(unit: Unit) -> Unit:
     """The same unit for a label that names the kept unit already, as `retention_time_s`."""
     same = {name: factor for name, factor in unit.factors.items() if factor == 1}
-    return Unit(same, "the label already names another unit", bare=_ONE)
+    return Unit(same, "the label already names another unit", bare=_ONE, signed=unit.signed)
 
 
 MINUTES = Unit(
@@ -66,7 +70,7 @@ def squeezed(text: str) -> str:
 
 
 def parse_quantity(text: str, unit: Unit, decimal: DecimalMark | None = "point") -> float:
-    """Read a number of 0 or more, with or without its unit.
+    """Read a number, of 0 or more unless the unit is signed, with or without its unit.
 
     `decimal` is the mark of the file, None when nothing is known of it; then a point is a decimal mark, and so is a
     comma unless three digits follow it.
@@ -86,7 +90,7 @@ def parse_quantity(text: str, unit: Unit, decimal: DecimalMark | None = "point")
         read = parse_number(number, _mark_of(number, decimal), factor=factor)
     except NumberTextError as error:
         raise ValueTextError(f"is not readable: {error}") from error
-    if read < 0:
+    if read < 0 and not unit.signed:
         raise ValueTextError("is negative")
     return read
 
@@ -142,10 +146,10 @@ _NEGATIVE = re.compile(r" ?(?:-|\(-\)|NEGATIVE|NEG)", re.IGNORECASE)
 
 
 def parse_ionisation(text: str) -> str:
-    """`EI` or `CI`, both positive, from a mode such as `EI+` or `electron ionization`; never assumed.
+    """`EI`, `CI` (both positive), `EI-` or `CI-`, from a mode such as `EI+` or `electron ionization`; never assumed.
 
     Raises:
-        ValueTextError: negative ions, another ionisation, or a text that is not understood.
+        ValueTextError: another ionisation, or a text that is not understood.
     """
     value = squeezed(text)
     for names, short in ((_EI, "EI"), (_CI, "CI")):
@@ -156,8 +160,8 @@ def parse_ionisation(text: str) -> str:
             if not rest or _POSITIVE.fullmatch(rest):
                 return short
             if _NEGATIVE.fullmatch(rest):
-                raise ValueTextError("says negative ions, which are not read: only positive ions are")
-    raise ValueTextError("is neither positive electron ionisation (EI+) nor chemical ionisation (CI+)")
+                return f"{short}-"
+    raise ValueTextError("is neither electron ionisation (EI+) nor chemical ionisation (CI+)")
 
 
 def parse_mass_accuracy_label(text: str) -> MassAccuracy:

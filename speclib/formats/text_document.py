@@ -133,6 +133,8 @@ def _refuse_null_bytes(file_name: str, data: bytes) -> None:
 
 
 def _refuse_control_characters(document: TextDocument) -> None:
+    if _CONTROL.search("\n".join(document.lines)) is None:
+        return
     for number, line in enumerate(document.lines, start=1):
         stray = _CONTROL.search(line)
         if stray is not None:

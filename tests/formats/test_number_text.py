@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from decimal import Decimal
 
 import pytest
@@ -9,7 +10,8 @@ from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from speclib.formats.mass_accuracy import MassAccuracyUnknownError, decide_mass_accuracy, written_decimals
-from speclib.formats.number_text import NumberTextError, parse_number
+from speclib.formats.number_text import NumberTextError, parse_number, parse_numbers
+from speclib.formats.options import DecimalMark
 from speclib.model.spectrum import MassAccuracy
 
 FINITE = st.floats(allow_nan=False, allow_infinity=False)
@@ -81,3 +83,23 @@ def test_whole_mz_are_unit_mass_without_a_note(mz: list[float]) -> None:
 def test_three_decimals_are_never_guessed(whole: int, thousandths: int) -> None:
     with pytest.raises(MassAccuracyUnknownError):
         decide_mass_accuracy([50.0, float(f"{whole}.{thousandths:03d}")], None, None)
+
+
+NUMBER_LIKE = (
+    st.text("0123456789.,+-eE _", max_size=9)
+    | FINITE.map(repr)
+    | st.sampled_from(["nan", "1e999", "1e-999", "0", "-0.0", "0" * 70, "0e5", "\u0661", "5e-324"])
+)
+
+
+@settings(deadline=None, max_examples=500)
+@given(st.lists(NUMBER_LIKE, max_size=6), st.sampled_from(["point", "comma"]))
+def test_many_numbers_at_once_are_read_as_one_by_one(texts: list[str], decimal: DecimalMark) -> None:
+    slow: list[float] | None
+    try:
+        slow = [parse_number(text, decimal) for text in texts]
+    except NumberTextError:
+        slow = None
+    fast = parse_numbers(texts, decimal)
+    assert fast == slow
+    assert [math.copysign(1, value) for value in fast or []] == [math.copysign(1, value) for value in slow or []]
