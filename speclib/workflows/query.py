@@ -133,14 +133,12 @@ def _nominal(value: float, is_exact: bool, known: Formula | None) -> int:
 def comparable_query(asked: Asked, given: Molecule) -> tuple[Comparable, Estimate, Estimate]:
     """The query ready for comparison, with its molecular mass and formula and where they come from.
 
-    What is given comes first; then, for a stored reference, its compound; then the highest plausible cluster of the
-    spectrum.
+    What is given comes first; then what the library holds: a reference's compound, an unknown's recorded mass; then the
+    highest plausible cluster of the spectrum.
     """
-    if given.nominal_mass is None and asked.entry is not None and asked.entry.compound and asked.entry.compound.formula:
-        known = parse_formula(asked.entry.compound.formula)
-        given, origin = Molecule(known.nominal_mass, known.exact_mass, known), "compound of the reference"
-    else:
-        origin = "given"
+    origin = "given"
+    if given.nominal_mass is None and asked.entry is not None:
+        given, origin = _held_molecule(asked.entry)
     bare = Comparable(asked.spectrum, given.formula, given.nominal_mass, given.exact_mass)
     formula = Estimate(str(given.formula) if given.formula else None, origin if given.formula else "not known")
     if given.nominal_mass is not None:
@@ -148,3 +146,11 @@ def comparable_query(asked: Asked, given: Molecule) -> tuple[Comparable, Estimat
     estimate = highest_plausible_cluster(bare.nominal.mz, bare.nominal.intensity)
     value = estimate.value if isinstance(estimate.value, int) else None
     return replace(bare, nominal_mass=value), estimate, formula
+
+
+def _held_molecule(entry: LibrarySpectrum) -> tuple[Molecule, str]:
+    """What the library holds of a stored spectrum's molecule, and how to call that."""
+    if entry.compound is not None and entry.compound.formula:
+        known = parse_formula(entry.compound.formula)
+        return Molecule(known.nominal_mass, known.exact_mass, known), "compound of the reference"
+    return Molecule(entry.molecular_mass), "recorded with the unknown"

@@ -161,6 +161,14 @@ def test_a_stored_reference_does_not_find_itself(speclib: Any, library: Path) ->
     assert found["molecular_mass"] == {"value": 100, "origin": "compound of the reference", "alternatives": []}
 
 
+def test_a_mass_given_once_is_remembered_with_the_unknown(speclib: Any, library: Path) -> None:
+    assert library.exists()
+    ok(speclib(*CARRY, *BY))
+    found = document(speclib(*L, "search", "5", "--measure", "shifted", "--json"))
+    assert (found["molecular_mass"]["value"], found["molecular_mass"]["origin"]) == (128, "recorded with the unknown")
+    assert found["neighbours"][0]["compound"]["name"] == "2-heptanone"
+
+
 def test_nothing_is_invented_where_nothing_is_computed_yet(speclib: Any, library: Path) -> None:
     assert library.exists()
     found = document(speclib(*L, "search", "unknown.txt", "--json"))
