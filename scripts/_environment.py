@@ -19,7 +19,7 @@ from typing import NoReturn
 REPOSITORY = Path(__file__).resolve().parents[1]
 CONSTRAINTS = REPOSITORY / "scripts" / "constraints.txt"
 OLDEST_PYTHON = (3, 11)
-DOWNLOAD_MB = {"demo": 230, "test": 260}
+DOWNLOAD_MB = {"demo": 240, "test": 270}
 """Sum of the wheels that pip fetches into an empty cache on Linux x86-64 with CPython 3.11, rounded up.
 
 Measured with `pip download -c scripts/constraints.txt` of the dependencies in pyproject.toml; other systems differ a
@@ -83,7 +83,16 @@ def _digest(files: list[Path], *words: str) -> str:
 
 def dependencies_digest(environment: Environment) -> str:
     """Identity of what pip installs besides the project: declared dependencies, pins, extras and Python."""
-    return _digest([REPOSITORY / "pyproject.toml", CONSTRAINTS], *environment.extras, sys.version)
+    # The folder belongs to it: programs of an environment name their place, so a moved one is made anew.
+    return _digest([REPOSITORY / "pyproject.toml", CONSTRAINTS], *environment.extras, sys.version, str(REPOSITORY))
+
+
+def build_requirements() -> list[str]:
+    """What pyproject.toml needs to build the project."""
+    import tomllib  # Missing before Python 3.11, which require_python tells first.
+
+    requires: list[str] = tomllib.loads((REPOSITORY / "pyproject.toml").read_text("utf-8"))["build-system"]["requires"]
+    return requires
 
 
 def sources_digest() -> str:
@@ -98,6 +107,14 @@ def prepare(environment: Environment) -> None:
     Ends the script with a sentence when that fails.
     """
     require_python()
+    try:
+        _prepare(environment)
+    except KeyboardInterrupt:
+        print("Stopped; the next run begins where a whole step was finished.", file=sys.stderr)
+        raise SystemExit(130) from None
+
+
+def _prepare(environment: Environment) -> None:
     wanted = (dependencies_digest(environment), sources_digest())
     held = tuple(environment.stamp.read_text("utf-8").split()) if environment.stamp.is_file() else ()
     if held == wanted:
@@ -107,7 +124,9 @@ def prepare(environment: Environment) -> None:
     if held[:1] == wanted[:1]:
         environment.stamp.unlink()
         print("The sources changed: installing the project anew ...", flush=True)
-        _pip(environment, "install", "--quiet", "--no-deps", "--force-reinstall", str(REPOSITORY))
+        _pip(
+            environment, "install", "--quiet", "--no-deps", "--force-reinstall", "--no-build-isolation", str(REPOSITORY)
+        )
     else:
         print(
             f"Making the environment {_shown(environment.folder)}: "
@@ -117,7 +136,9 @@ def prepare(environment: Environment) -> None:
         )
         shutil.rmtree(environment.folder, ignore_errors=True)
         _create(environment)
-        _pip(environment, "install", "-c", str(CONSTRAINTS), project)
+        # The build backend stays in the environment, so that changed sources are installed without the network.
+        _pip(environment, "install", "-c", str(CONSTRAINTS), *build_requirements())
+        _pip(environment, "install", "-c", str(CONSTRAINTS), "--no-build-isolation", project)
     environment.stamp.write_text("\n".join(wanted) + "\n", "utf-8")
 
 
@@ -136,7 +157,8 @@ def _create(environment: Environment) -> None:
 
 def _pip(environment: Environment, *arguments: str) -> None:
     command = [str(environment.program("python")), "-m", "pip", "--disable-pip-version-check", *arguments]
-    done = subprocess.run(command, check=False)
+    surroundings = {name: value for name, value in os.environ.items() if name not in ("PYTHONPATH", "PYTHONHOME")}
+    done = subprocess.run(command, env=surroundings, check=False)
     if done.returncode != 0:
         stop(
             "pip could not install what is needed (see above). Check the internet connection and the free disk space "

@@ -22,6 +22,9 @@ from collections.abc import Callable, Iterable
 from dataclasses import dataclass
 from pathlib import Path
 
+# Python leaves the script's own folder out of its search path when PYTHONSAFEPATH is set, as the tests do.
+sys.path.insert(0, str(Path(__file__).resolve().parent))
+
 import _demo_tables as t
 
 LIBRARY = Path(__file__).resolve().parent.parent / "demo_library"
