@@ -11,6 +11,8 @@ from __future__ import annotations
 from collections.abc import Sequence
 from dataclasses import dataclass
 
+import numpy as np
+
 from speclib.annotation.checks import Candidate, CheckContext, check_candidate, failed_check, is_hard
 from speclib.annotation.prior import PRIOR_BASIS, prior_confidence
 from speclib.annotation.satellites import Satellites, predict_satellites
@@ -26,6 +28,7 @@ VOTE_POWER = 4
 """A donor votes with its similarity to this power: near relatives outweigh a crowd of distant ones. Chosen by
 leaving out each compound of a set of principal-peak tables in turn; powers 3 to 6 do equally well there."""
 SMALLEST_SHARE = 0.02
+HEIGHT_POWER = 0.25
 
 
 @dataclass(frozen=True, eq=False)
@@ -79,6 +82,7 @@ def _collect(unknown: Unknown, donors: Sequence[Donor]) -> list[Candidate]:
             return
         n = donor.neighbour
         weight = n.similarity**VOTE_POWER * _side_share(donor, assignment, route) ** 0.5
+        weight *= _height_agreement(unknown, donor, assignment, place[mz])
         cast = DonorVote(assignment.id, assignment.uid, n.spectrum_id, n.compound.name, route, n.similarity, weight)
         votes.setdefault((mz, formula), {}).setdefault(f"{n.compound.uid}|{route}", (cast, assignment))
 
@@ -106,6 +110,20 @@ def _side_share(donor: Donor, assignment: Assignment, route: Route) -> float:
         return 0.5
     ion = parse_formula(assignment.formula).nominal_mass / donor.comparable.nominal_mass
     return max(SMALLEST_SHARE, ion if route is Route.SAME_LOSS else 1.0 - ion)
+
+
+def _height_agreement(unknown: Unknown, donor: Donor, assignment: Assignment, position: int) -> float:
+    """How alike the two peaks stand in their spectra: the ratio of their relative heights to a low power.
+
+    A low power, because relatives differ in height more often than in composition. A donor replicate without the peak
+    counts as a tenth as high.
+    """
+    ours, theirs = unknown.comparable.nominal, donor.comparable.nominal
+    ours_height = float(ours.intensity[position] / ours.intensity.max())
+    found = np.flatnonzero(theirs.mz == np.rint(assignment.mz))
+    theirs_height = float(theirs.intensity[found[0]] / theirs.intensity.max()) if len(found) else 0.1 * ours_height
+    low, high = sorted((ours_height, theirs_height))
+    return max(SMALLEST_SHARE, low / high) ** HEIGHT_POWER if high > 0 else 1.0
 
 
 def _same_loss_ion(unknown: Unknown, assignment: Assignment) -> Formula | None:
