@@ -7,7 +7,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from speclib.chemistry.formula import Formula, parse_formula, parse_ion_formula
-from speclib.chemistry.subformulae import LOWEST_RDBE
+from speclib.chemistry.subformulae import can_be_an_ion
 from speclib.errors import InvalidFormulaError, InvalidValueError
 from speclib.model.assignment import Parity
 from speclib.search.rows import Comparable
@@ -95,7 +95,7 @@ def _check_mass(target: Comparable, peak: int, mz: float, ion: Formula) -> None:
 
 
 def _loss_of(molecule: Formula, ion: Formula, stated: Formula | None) -> Formula:
-    if ion.rdbe < LOWEST_RDBE:
+    if not can_be_an_ion(ion):
         raise InvalidFormulaError(f"{ion} has too many hydrogens or halogens to be an ion", "check the formula")
     if not molecule.contains(ion):
         raise InvalidValueError(f"{ion} is not part of the molecule {molecule}", "check the formula")

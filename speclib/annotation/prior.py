@@ -19,6 +19,8 @@ UNSEEN_VOTE_WITHIN_FORMULA = 0.03
 """The same when the formula is known and allows other compositions; it is 0 when it allows one only."""
 SINGLE_WITNESS_LIMIT, SEVERAL_WITNESSES_LIMIT = 0.75, 0.95
 """One donor compound, or several, do not make a composition surer than this while the formula allows others."""
+DISTANT_LIMIT = 0.6
+"""A donor without any similarity would not make a composition surer than this; the limit rises to HIGHEST with it."""
 IMPLAUSIBLE_LOSS_FACTOR = 0.5
 LOWEST, HIGHEST = 0.02, 0.97
 """A prior is never certain."""
@@ -29,9 +31,10 @@ def prior_confidence(
 ) -> float:
     """Prior probability that the composition is right.
 
-    own vote / (own vote + votes of rivals that fit the formula + unseen vote), halved for an implausible loss, and
-    within 0.02 and 0.97. The two unseen votes were chosen so that, on principal-peak tables with each compound left
-    out in turn, the prior is close to the share found right without a formula and stays below it with one.
+    own vote / (own vote + votes of rivals that fit the formula + unseen vote), halved for an implausible loss, limited
+    by the number and the similarity of the donors, and within 0.02 and 0.97. The two unseen votes were chosen so that,
+    on principal-peak tables with each compound left out in turn, the prior is close to the share found right without a
+    formula and stays below it with one.
     """
     molecule = context.molecule
     live = [rival for rival in rivals if molecule is None or molecule.contains(rival.formula)]
@@ -44,4 +47,5 @@ def prior_confidence(
     value = candidate.weight / (candidate.weight + unseen + sum(rival.weight for rival in live))
     if any(check.name == LOSS and check.passed is False for check in checks):
         value *= IMPLAUSIBLE_LOSS_FACTOR
-    return min(limit, max(LOWEST, value))
+    nearest = max(vote.similarity for vote in candidate.votes)
+    return min(limit, DISTANT_LIMIT + (HIGHEST - DISTANT_LIMIT) * nearest, max(LOWEST, value))

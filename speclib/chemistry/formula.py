@@ -194,3 +194,16 @@ def obeys_nitrogen_rule(formula: Formula) -> bool:
     one each and are taken out first.
     """
     return (formula.nominal_mass - formula["D"]) % 2 == formula["N"] % 2
+
+
+def require_closed_shell(formula: Formula) -> None:
+    """Refuse a formula that no closed-shell neutral molecule has.
+
+    Raises:
+        InvalidFormulaError: too many hydrogens or halogens, or an odd electron.
+    """
+    if formula.rdbe < 0 or not float(formula.rdbe).is_integer():
+        raise InvalidFormulaError(
+            f"{formula} is not the formula of a neutral molecule (rings plus double bonds would be {formula.rdbe:g})",
+            "check the hydrogens",
+        )

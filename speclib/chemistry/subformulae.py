@@ -12,6 +12,17 @@ from speclib.chemistry.elements import ELECTRON_MASS, ELEMENTS
 from speclib.chemistry.formula import Formula
 
 LOWEST_RDBE = -0.5
+LONE_PAIRS = ("N", "O", "P", "S", "Se", "F", "Cl", "Br", "I")
+
+
+def can_be_an_ion(composition: Formula) -> bool:
+    """Whether a composition leaves its atoms enough bonds to be a singly charged ion.
+
+    Below RDBE 0 an ion is a protonated saturated molecule, so it needs an atom with a lone pair: CH6N+, but not C2H7+.
+    """
+    if composition.rdbe < LOWEST_RDBE:
+        return False
+    return composition.rdbe >= 0 or any(composition[symbol] for symbol in LONE_PAIRS)
 
 
 def subformulae_near_mz(parent: Formula, mz: float, tolerance_da: float) -> list[Formula]:

@@ -110,7 +110,8 @@ def _show(result: Any) -> None:
     for remark in result.remarks:
         talk(f"Note: {remark}.")
     if result.case_id is not None:
-        talk(f"Kept as case {result.case_id}. Next: speclib review {result.case_id} --accept ID --by NAME")
+        following = f" Next: speclib review {result.case_id} --accept ID --by NAME" if result.proposals else ""
+        talk(f"Kept as case {result.case_id}.{following}")
     talk(CAUTION)
 
 
@@ -142,6 +143,9 @@ def show_proposals(proposals: Any, refused: Any) -> None:
             for check in p.checks
             if check.passed is False
         )
+        unnamed = [f"m/z {p.mz:g} {words}" for p in proposals if (words := _unvoted(p, proposals))]
+        if unnamed:
+            print_lines([f"Possible within the formula as well, though no donor says so: {'; '.join(unnamed)}."])
         basis = sorted({p.confidence_basis for p in proposals})
         print_lines([f"Confidence: {', '.join(basis)} (a prior is a documented guess, not a measured probability)."])
     if refused:
@@ -161,6 +165,17 @@ def show_proposals(proposals: Any, refused: Any) -> None:
             ),
             right=("id", "m/z"),
         )
+
+
+def _unvoted(proposal: Any, proposals: Any) -> str:
+    """Compositions that the formula allows at the proposal's peak and that nobody proposes, for the first one only."""
+    there = [p.formula for p in proposals if p.peak == proposal.peak]
+    detail = next((c.detail for c in proposal.checks if c.name == "formula"), "")
+    _, _, others = detail.partition("so is ")
+    free = [name for name in others.split(", ") if name and name not in there]
+    if proposal.formula != there[0] or not free:
+        return ""
+    return ", ".join(free[:3]) + (f" and {len(free) - 3} more" if len(free) > 3 else "")
 
 
 def _donors(proposal: Any) -> str:

@@ -36,7 +36,7 @@ def list_(ctx: click.Context, as_json: bool) -> None:
 @json_option
 @click.pass_context
 def show(ctx: click.Context, case_id: int, as_json: bool) -> None:
-    """Show one case: neighbours, proposals with their arguments, decisions, refused proposals."""
+    """Show one case: neighbours, proposals with their state, refused ones; --json holds every check and donor."""
     from speclib.cli.carry import show_proposals
     from speclib.workflows.carry import load_case
 

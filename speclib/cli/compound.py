@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+import shlex
+
 import click
 
 from speclib.cli.options import by_option, json_option, open_library
@@ -50,7 +52,8 @@ def add(
         return
     mass = f", nominal mass {made.structure.nominal_mass}" if made.structure else ""
     print_lines([f"Compound {made.id}: {made.name}, {made.formula}{mass}"])
-    talk(f"Next: take in its spectra with a manifest, or: speclib intake FILE --compound '{made.name}' --by NAME")
+    quoted = shlex.quote(made.name)
+    talk(f"Next: take in its spectra with a manifest, or: speclib intake FILE --compound {quoted} --by NAME")
 
 
 @compound.command(name="list")

@@ -62,7 +62,7 @@ def intake(ctx: click.Context, /, files: tuple[Path, ...], as_json: bool, **valu
 def _show(result: Any) -> None:
     new = [s for s in result.spectra if not s.already_held]
     print_table(
-        ("spectrum", "file", "status", "compound", "findings"),
+        ("spectrum", "file", "status", "compound id", "findings"),
         (
             (
                 s.spectrum_id,
@@ -73,7 +73,7 @@ def _show(result: Any) -> None:
             )
             for s in result.spectra
         ),
-        right=("spectrum", "compound"),
+        right=("spectrum", "compound id"),
     )
     held = len(result.spectra) - len(new)
     print_lines(

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import shlex
 from pathlib import Path
 
 import click
@@ -24,7 +25,7 @@ def init(path: Path, analyst: str | None, as_json: bool) -> None:
         print_json({"schema": 1, "library": str(path), "library_state": state})
         return
     print_lines([f"{path} is ready; library state {state[:12]}."])
-    talk(f"Next: speclib -L {path} intake --manifest MANIFEST.csv --by NAME")
+    talk(f"Next: speclib -L {shlex.quote(str(path))} intake --manifest MANIFEST.csv --by NAME")
 
 
 @click.command()

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import json
+import shutil
 import sys
 from collections.abc import Iterable, Sequence
 from typing import Any
@@ -27,9 +28,20 @@ def print_json(document: dict[str, Any]) -> None:
     click.echo(json.dumps(document, ensure_ascii=False, indent=2, allow_nan=False))
 
 
+def width() -> int:
+    """Columns to fill: those of a terminal, at most 100; 100 in a pipe."""
+    return min(WIDTH, shutil.get_terminal_size((WIDTH, 24)).columns) if sys.stdout.isatty() else WIDTH
+
+
 def talk(text: str) -> None:
-    """Say something on stderr."""
-    click.echo(plain(text), err=True)
+    """Say something on stderr: wrapped on a terminal, one line per message in a pipe or log."""
+    said = plain(text)
+    if sys.stderr.isatty():
+        import textwrap
+
+        columns = min(WIDTH, shutil.get_terminal_size((WIDTH, 24)).columns)
+        said = textwrap.fill(said, columns, break_long_words=False, break_on_hyphens=False)
+    click.echo(said, err=True)
 
 
 def print_lines(lines: Iterable[str]) -> None:
@@ -38,7 +50,7 @@ def print_lines(lines: Iterable[str]) -> None:
 
     for line in lines:
         hanging = " " * (len(line) - len(line.lstrip()) + 2)
-        for part in textwrap.wrap(plain(line), WIDTH, subsequent_indent=hanging) or [""]:
+        for part in textwrap.wrap(plain(line), width(), subsequent_indent=hanging) or [""]:
             click.echo(part)
 
 
@@ -54,7 +66,7 @@ def print_table(columns: Sequence[str], rows: Iterable[Sequence[object]], *, rig
         table.add_column(Text(name), justify="right" if name in right else "left", overflow="fold")
     for row in rows:
         table.add_row(*(Text("" if cell is None else plain(cell)) for cell in row))
-    console = Console(file=sys.stdout, width=WIDTH, highlight=False, no_color=not sys.stdout.isatty())
+    console = Console(file=sys.stdout, width=width(), highlight=False, no_color=not sys.stdout.isatty())
     console.print(table)
 
 

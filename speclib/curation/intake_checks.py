@@ -22,16 +22,18 @@ def check_at_intake(
     findings += check_scanned_range(found.spectrum)
     findings += check_unit_mass_boundaries(found.spectrum, formula)
     findings += check_claimed_formula(found, formula)
-    findings += [
-        Finding(
-            "identical peaks",
-            Severity.DOUBT,
-            f"every peak equals those of {held.label}: one of the two names may be wrong",
-            COMMON_PRACTICE,
-        )
-        for held in same_peaks
-    ]
+    findings += [_identical(held) for held in same_peaks]
     return findings
+
+
+def _identical(held: LibrarySpectrum) -> Finding:
+    """The same peaks under another name are a doubt; those of a held unknown are what a solved case looks like."""
+    if held.compound is None:
+        return Finding(
+            "identical peaks", Severity.NOTE, f"these are the peaks of the unknown {held.label}", COMMON_PRACTICE
+        )
+    reason = f"every peak equals those of {held.label}: one of the two names may be wrong"
+    return Finding("identical peaks", Severity.DOUBT, reason, COMMON_PRACTICE)
 
 
 def check_scanned_range(spectrum: Spectrum) -> list[Finding]:

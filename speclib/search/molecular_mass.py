@@ -1,8 +1,8 @@
-"""The molecular mass of an unknown from its spectrum alone: the highest plausible cluster.
+"""The molecular mass of an unknown from its spectrum alone: the highest cluster, if it can be a molecular ion.
 
-Criteria of the molecular ion (McLafferty & Turecek 1993): highest cluster apart from isotopes, and no implausible
-losses (4 to 14, 21 to 25) to the major peaks below it. Necessary, not sufficient: many classes show no molecular ion
-at all.
+Criteria (McLafferty & Turecek 1993): the highest m/z apart from isotopes, and no implausible losses (4 to 14, 21 to
+25) to the major peaks below it. Necessary, not sufficient: many classes show no molecular ion at all, and with several
+bromines or chlorines a satellite of the cluster may be taken for the reference composition.
 """
 
 from __future__ import annotations
@@ -18,32 +18,44 @@ NOISE = 1.0
 """Peaks below this relative intensity (base peak = 100) are not taken for a molecular ion's cluster."""
 MAJOR = 10.0
 C13_PER_CARBON = 1.0816
+SI29_PER_SILICON, SI30_PER_SILICON = 5.0801, 3.3527
 """Percent of the reference peak; IUPAC 2013 abundances."""
+DALTON_PER_CARBON, DALTON_PER_SILICON = 12.0, 65.0
+"""Mass that comes with a carbon at the least, and with a silicon in siloxanes and silyl ethers (73 or 74 a unit)."""
+SLACK = 1.3
 
 
 def highest_plausible_cluster(mz: NDArray[np.float64], intensity: NDArray[np.float64]) -> Estimate:
     """Estimate the nominal molecular mass from whole m/z and intensities, shape `(n,)`.
 
-    The value is None when no cluster is plausible; alternatives are the next plausible ones, without support numbers.
+    The value is None when the highest cluster loses what no molecular ion loses; the origin then says so.
     """
     relative = 100.0 * intensity / intensity.max()
     heights = {int(m): float(r) for m, r in zip(mz, relative, strict=True) if r >= NOISE}
-    monoisotopic = [m for m in sorted(heights, reverse=True) if not _is_satellite(m, heights)]
-    major = [m for m in monoisotopic if heights[m] >= MAJOR]
-    plausible = [m for m in monoisotopic if not any(m - lower in IMPLAUSIBLE_LOSSES for lower in major)]
-    if not plausible:
-        return Estimate(None, "no plausible molecular-ion cluster in the spectrum")
-    alternatives = tuple((m, None) for m in plausible[1:4])
-    return Estimate(plausible[0], "highest plausible cluster of the spectrum", alternatives)
+    monoisotopic = [m for m in sorted(heights) if not _is_satellite(m, heights)]
+    highest = monoisotopic[-1]
+    losses = [highest - m for m in monoisotopic if heights[m] >= MAJOR and highest - m in IMPLAUSIBLE_LOSSES]
+    if losses:
+        reason = (
+            f"the highest cluster, m/z {highest}, is no molecular ion: m/z {highest - losses[-1]} would be a loss of"
+        )
+        return Estimate(None, f"{reason} {losses[-1]}")
+    odd = "; an odd mass needs an odd number of N, or it is a fragment" if highest % 2 else ""
+    return Estimate(highest, f"highest plausible cluster of the spectrum{odd}")
 
 
 def _is_satellite(m: int, heights: dict[int, float]) -> bool:
-    """Whether natural isotopes of lower peaks can account for this one: 13C from m - 1, Cl or Br (or S, Si) from m -
-    2.
+    """Whether natural isotopes of lower peaks can account for this one.
+
+    13C and 29Si from m - 1; 30Si, Cl, Br and their sequels from m - 2.
     """
-    from_one = heights.get(m - 1, 0.0) * (m - 1) / 12.0 * C13_PER_CARBON / 100.0
     one_below, two_below = heights.get(m - 1, 0.0), heights.get(m - 2, 0.0)
-    if one_below and heights[m] <= 1.3 * from_one:
+    carbon = (m - 1) / DALTON_PER_CARBON * C13_PER_CARBON
+    silicon = (m - 1) / DALTON_PER_SILICON
+    if one_below and heights[m] <= SLACK * one_below * max(carbon, silicon * SI29_PER_SILICON) / 100.0:
+        return True
+    second_silicon = silicon * SI30_PER_SILICON + (silicon * SI29_PER_SILICON) ** 2 / 200.0
+    if two_below and heights[m] <= SLACK * two_below * second_silicon / 100.0:
         return True
     # A halogen step leaves m - 1 low; the ratio fits one chlorine (32 %) or one bromine (97 %), or its falling sequel.
     ratio = heights[m] / two_below if two_below else float("inf")

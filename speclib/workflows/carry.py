@@ -20,12 +20,19 @@ from speclib.store.cases import Case, get_case, insert_case, open_cases_of
 from speclib.store.library import Library
 from speclib.store.spectra import insert_findings, insert_source, insert_spectrum, spectra_with_content
 from speclib.store.writing import WriteTransaction
-from speclib.workflows.query import Asked, comparable_query, given_molecule, resolve_query
+from speclib.workflows.query import (
+    Asked,
+    comparable_query,
+    given_molecule,
+    mass_remarks,
+    reading_remarks,
+    resolve_query,
+)
 from speclib.workflows.search import reference_rows
 
 DEFAULT_MIN_SIMILARITY = 0.3
 DEFAULT_MOST_DONORS = 20
-WEAK_SIMILARITY = 0.5
+WEAK_SIMILARITY = 0.6
 """Below this the best donor is hardly a relative; common practice, no source."""
 
 
@@ -84,7 +91,11 @@ def carry_to_unknown(
         proposals=tuple(proposals),
         refused=tuple(refused),
         difference=_difference(query.formula, query.nominal_mass, donors[0].neighbour if donors else None),
-        remarks=tuple(_remarks(request, given.nominal_mass is None, query.formula, neighbours, donors, mass.value)),
+        remarks=(
+            *reading_remarks(asked),
+            *mass_remarks(query),
+            *_remarks(request, given.nominal_mass is None, query.formula, neighbours, donors, mass.value),
+        ),
     )
     if not save:
         return result

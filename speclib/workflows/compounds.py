@@ -7,7 +7,7 @@ from dataclasses import dataclass
 from typing import Any
 
 from speclib.chemistry.cas import is_valid_cas
-from speclib.chemistry.formula import parse_formula
+from speclib.chemistry.formula import parse_formula, require_closed_shell
 from speclib.errors import InvalidValueError, RefusedError
 from speclib.model.assignment import Assignment
 from speclib.model.compound import Compound, Structure
@@ -128,6 +128,8 @@ def check_new_compound(new: NewCompound) -> CheckedCompound:
         raise InvalidValueError(
             f"{name}: the formula {formula} is not that of the SMILES ({structure.formula})", "correct one"
         )
+    if formula and not structure:
+        require_closed_shell(parse_formula(formula))
     if not structure and not formula:
         raise InvalidValueError(
             f"{name}: neither a SMILES nor a formula is given", "give --smiles, or --formula if there is none"

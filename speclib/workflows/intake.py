@@ -202,6 +202,9 @@ def _store(
     held = None if options.replicate else _held(same, compound)
     if held:
         remark = f"its peaks are held already as {held.label}; nothing was stored (--replicate stores them again)"
+        differing = _differing(held, order)
+        if differing:
+            remark += f"; what this row says differently was NOT taken over: {', '.join(differing)}"
         return _taken(found, held.id, compound, _status_text(held), (), already_held=True, remark=remark)
     formula = parse_formula(compound.formula) if compound and compound.formula else None
     findings = check_at_intake(found, formula, same if not options.replicate else ())
@@ -278,6 +281,16 @@ def _held(same: Sequence[LibrarySpectrum], compound: Compound | None) -> Library
         if compound is None or (entry.compound is not None and entry.compound.id == compound.id):
             return entry
     return None
+
+
+def _differing(held: LibrarySpectrum, order: _Order) -> list[str]:
+    """What an order says of a held spectrum that the library does not: a silent loss of corrections would be worse."""
+    stored = held.spectrum.measurement.known()
+    stated = order.found.spectrum.measurement.known()
+    differing = [name for name, value in stated.items() if stored.get(name) != value]
+    if order.row.status is Status.CONFIRMED and held.status is not Status.CONFIRMED:
+        differing.insert(0, f"status confirmed (use `speclib confirm {held.id}`)")
+    return differing
 
 
 def _status_text(entry: LibrarySpectrum) -> str:

@@ -5,7 +5,8 @@ from __future__ import annotations
 from dataclasses import dataclass, replace
 from pathlib import Path
 
-from speclib.chemistry.formula import Formula, parse_formula
+from speclib.chemistry.formula import Formula, parse_formula, require_closed_shell
+from speclib.curation.intake_checks import check_at_intake
 from speclib.errors import AmbiguousEntryError, EntryNotFoundError, InputFileError, InvalidValueError
 from speclib.formats.reading import ReadOptions, read_spectra
 from speclib.model.entry import LibrarySpectrum
@@ -17,6 +18,8 @@ from speclib.store.library import Library
 from speclib.store.spectra import get_spectrum
 from speclib.workflows.manifest import phase_named
 
+MOST_ISOTOPE_STEPS = 8
+"""Satellites of polyhalogenated molecular ions reach some steps above the reference composition."""
 AMBIGUOUS_FRACTION = 0.35
 """An exact mass further than this from a whole number does not tell the nominal mass safely (C40H82: 562.642 is
 562).
@@ -103,6 +106,8 @@ def given_molecule(mass: str | None, formula: str | None) -> Molecule:
         InvalidValueError, InvalidFormulaError: unreadable, or in contradiction.
     """
     known = parse_formula(formula) if formula else None
+    if known is not None:
+        require_closed_shell(known)
     if mass is None:
         return Molecule(known.nominal_mass, known.exact_mass, known) if known else Molecule()
     try:
@@ -120,6 +125,25 @@ def given_molecule(mass: str | None, formula: str | None) -> Molecule:
             "give one of them",
         )
     return Molecule(nominal, known.exact_mass if known else exact, known)
+
+
+def mass_remarks(query: Comparable) -> list[str]:
+    """What speaks against the molecular mass in the spectrum itself: major peaks above it that isotopes cannot be."""
+    if query.nominal_mass is None:
+        return []
+    peaks = query.nominal
+    above = (peaks.mz > query.nominal_mass + MOST_ISOTOPE_STEPS) & (peaks.intensity >= 0.02 * peaks.intensity.max())
+    if not above.any():
+        return []
+    listed = ", ".join(f"{mz:g}" for mz in peaks.mz[above][-4:])
+    return [f"peaks above the molecular mass {query.nominal_mass} (m/z {listed}) contradict it"]
+
+
+def reading_remarks(asked: Asked) -> list[str]:
+    """What the reader and the checks at the door say of a file that is asked about."""
+    if asked.found is None:
+        return []
+    return [finding.reason for finding in check_at_intake(asked.found, None, ())]
 
 
 def _nominal(value: float, is_exact: bool, known: Formula | None) -> int:

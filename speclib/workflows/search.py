@@ -17,7 +17,14 @@ from speclib.store.compounds import get_compound
 from speclib.store.library import Library
 from speclib.store.spectra import searchable_references
 from speclib.store.trail import library_state
-from speclib.workflows.query import Asked, comparable_query, given_molecule, resolve_query
+from speclib.workflows.query import (
+    Asked,
+    comparable_query,
+    given_molecule,
+    mass_remarks,
+    reading_remarks,
+    resolve_query,
+)
 
 
 @dataclass(frozen=True)
@@ -51,7 +58,7 @@ def search_library(library: Library, request: SearchRequest, *, progress: Progre
         )
     rows, keep, state = reference_rows(library, asked, request.exclude_compounds, confirmed_only=request.confirmed_only)
     neighbours = search_rows(query, rows, request.settings, keep=keep, progress=progress)
-    remarks = []
+    remarks = [*reading_remarks(asked), *mass_remarks(query)]
     if request.settings.measure is not Measure.COSINE and given.nominal_mass is None:
         remarks.append(f"the molecular mass {mass.value} is inferred ({mass.origin}); give --mass if you know it")
     if not neighbours:

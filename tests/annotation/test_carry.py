@@ -136,6 +136,12 @@ def test_an_ion_that_the_molecule_cannot_hold_is_refused_by_the_formula() -> Non
     assert "C9H20" in check(at(refused, 58)["C3H6O"], FORMULA)[1]
 
 
+def test_a_hydrocarbon_ion_with_more_hydrogens_than_an_alkyl_cation_is_refused() -> None:
+    donor = reference(6, "donor", "C9H20O", {43: 50, 73: 100, 144: 20})
+    _, refused = carried({43: 50, 73: 100, 116: 20}, "C7H16O", 116, [(donor, [(73, "C5H13", "x")])])
+    assert at(refused, 73)["C5H13"].refused_by == FORMULA
+
+
 def test_an_isotope_satellite_is_refused_and_names_its_parent() -> None:
     # m/z 93 is 8 % of m/z 92: 13C of C7H8 (7.6 %) accounts for nearly all of it.
     donor = reference(2, "donor", "C8H10", {91: 100, 92: 60, 93: 5, 106: 30})
@@ -155,6 +161,9 @@ def test_a_chlorine_ion_without_its_satellite_is_refused_only_when_it_should_sho
     donors = [(donor, ions), (bigger, ions_as_fragment)]
     _, refused = carried(peaks, "C8H9Cl", 140, donors)
     assert at(refused, 112)["C6H5Cl"].refused_by == ISOTOPES
+    # Without its 13C satellites only, it stays: background subtraction takes those off.
+    proposals, _ = carried({**peaks, 114.0: 32.0}, "C8H9Cl", 140, donors)
+    assert check(at(proposals, 112)["C6H5Cl"], ISOTOPES)[0] is None
     # Scanned only to 112, no satellite could be seen.
     low = Measurement(mz_from=40, mz_to=112)
     proposals, _ = carried(peaks, "C8H9Cl", 140, donors, measurement=low)

@@ -89,6 +89,30 @@ def test_a_skipped_row_leaves_no_compound_behind(speclib: Any, library: Path) ->
     assert document(speclib(*L, "compound", "list", "--json")) == before
 
 
+def test_corrections_in_a_second_manifest_are_not_lost_in_silence(speclib: Any, library: Path) -> None:
+    assert library.exists()
+    Path("again.csv").write_text(
+        "file,compound,status,standard,ri\nhexanone_2.txt,2-hexanone,confirmed,lot 9,795\n", encoding="utf-8"
+    )
+    taken = document(speclib(*L, "intake", "--manifest", "again.csv", *BY, "--json"))["spectra"][0]
+    assert (taken["already_held"], taken["status"]) == (True, "provisional")
+    assert "NOT taken over: status confirmed (use `speclib confirm 2`), retention_index" in taken["remark"]
+
+
+def test_peaks_above_the_given_mass_are_said_to_contradict_it(speclib: Any, library: Path) -> None:
+    assert library.exists()
+    found = document(speclib(*L, "search", "unknown.txt", "--mass", "100", "--measure", "shifted", "--json"))
+    assert any("contradict" in remark and "128" in remark for remark in found["remarks"])
+
+
+def test_a_formula_of_no_neutral_molecule_is_refused(speclib: Any, library: Path) -> None:
+    assert library.exists()
+    for formula in ("C9H17O2", "C2H9"):
+        outcome = speclib(*L, "carry", "unknown.txt", "--formula", formula, "--no-save")
+        assert outcome.status == 1
+        assert formula in outcome.err
+
+
 def test_a_sign_off_from_a_manifest_says_so(speclib: Any, library: Path) -> None:
     assert library.exists()
     events = document(speclib(*L, "history", "--spectrum", "1", "--json"))["events"]
