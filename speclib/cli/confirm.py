@@ -5,7 +5,7 @@ from __future__ import annotations
 import click
 
 from speclib.cli.options import by_option, json_option, open_library
-from speclib.cli.output import print_json, print_lines
+from speclib.cli.output import print_json, print_lines, talk
 
 
 @click.command()
@@ -34,3 +34,6 @@ def confirm(
     print_lines(
         f"{entry.label} is confirmed by {result.analyst} against {result.standard}." for entry in result.confirmed
     )
+    for spectrum_id, reasons in result.doubts.items():
+        for reason_text in reasons:
+            talk(f"Doubt still open on spectrum {spectrum_id}: {reason_text}.")

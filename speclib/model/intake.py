@@ -37,14 +37,15 @@ class TakenSpectrum:
 
 @dataclass(frozen=True)
 class Skipped:
-    """Something that was not taken in, and why."""
+    """Something that was not taken in, why, and its line in a table if it stood in one."""
 
     file: str
     reason: str
+    line: int | None = None
 
     def to_json(self) -> dict[str, Any]:
         """The reason as plain values."""
-        return {"file": self.file, "reason": self.reason}
+        return {"file": self.file, "reason": self.reason, "line": self.line}
 
 
 @dataclass(frozen=True)

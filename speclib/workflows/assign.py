@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import sqlite3
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from pathlib import Path
 from typing import Any
 
@@ -40,6 +40,7 @@ class NewAssignment:
     file: str | None = None
     index: int | None = None
     place: str = ""
+    line: int | None = None
 
 
 @dataclass(frozen=True)
@@ -75,8 +76,9 @@ def assign_from_csv(library: Library, path: Path, *, analyst: str | None, progre
         try:
             wanted.append(_from_row(row, place))
         except SpeclibError as error:
-            skipped.append(Skipped(row["file"] or row["spectrum_id"], f"{place}: {error}"))
-    return _assign(library, wanted, skipped, analyst, progress, {"from": path.name})
+            skipped.append(Skipped(row["file"] or row["spectrum_id"], f"{place}: {error}", row.line))
+    result = _assign(library, wanted, skipped, analyst, progress, {"from": path.name})
+    return replace(result, skipped=tuple(sorted(result.skipped, key=lambda s: s.line or 0)))
 
 
 def assign_peak(library: Library, new: NewAssignment, *, analyst: str | None) -> AssignResult:
@@ -107,6 +109,7 @@ def _from_row(row: TableRow, place: str) -> NewAssignment:
         row["file"] or None,
         whole_number_in_cell(row["index"], "index"),
         place,
+        row.line,
     )
 
 
@@ -134,7 +137,7 @@ def _assign(
                 except SpeclibError as error:
                     if alone:
                         raise
-                    skipped.append(Skipped(new.file or str(new.spectrum_id), f"{new.place}: {error}"))
+                    skipped.append(Skipped(new.file or str(new.spectrum_id), f"{new.place}: {error}", new.line))
                     continue
                 if written is None:
                     held += 1

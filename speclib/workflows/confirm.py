@@ -36,12 +36,13 @@ def require_gate(compound: Compound | None, standard: str | None, faults: Sequen
 
 @dataclass(frozen=True)
 class ConfirmResult:
-    """References that were confirmed, and the library state after."""
+    """References that were confirmed, the doubts that were open on them, and the library state after."""
 
     confirmed: tuple[LibrarySpectrum, ...]
     standard: str
     analyst: str
     library_state: str
+    doubts: dict[int, tuple[str, ...]]
 
     def to_json(self) -> dict[str, Any]:
         """The result as plain values."""
@@ -50,6 +51,7 @@ class ConfirmResult:
             "confirmed": [entry.to_json() for entry in self.confirmed],
             "standard": self.standard,
             "analyst": self.analyst,
+            "open_doubts": {str(spectrum_id): list(reasons) for spectrum_id, reasons in self.doubts.items()},
             "library_state": self.library_state,
         }
 
@@ -70,14 +72,16 @@ def confirm_references(
     """
     if not spectrum_ids:
         raise InvalidValueError("no spectrum is named", "give the numbers of the references to confirm")
+    doubts: dict[int, tuple[str, ...]] = {}
     with library.writing("confirm", analyst=analyst, reason=reason) as transaction:
         connection = transaction.connection
         for spectrum_id in dict.fromkeys(spectrum_ids):
             entry = get_spectrum(connection, spectrum_id)
             try:
                 _require_undecided(entry)
-                faults = [f.reason for f in open_findings(connection, spectrum_id) if f.severity is Severity.FAULT]
-                require_gate(entry.compound, standard, faults)
+                findings = open_findings(connection, spectrum_id)
+                require_gate(entry.compound, standard, [f.reason for f in findings if f.severity is Severity.FAULT])
+                doubts[spectrum_id] = tuple(f.reason for f in findings if f.severity is Severity.DOUBT)
             except SpeclibError as error:
                 raise RefusedError(
                     f"{entry.label}: {error.message}", error.advice or "nothing was confirmed"
@@ -93,7 +97,7 @@ def confirm_references(
         transaction.detail = {"spectra": list(dict.fromkeys(spectrum_ids)), "standard": standard.strip()}
     with library.reading() as connection:
         confirmed = tuple(get_spectrum(connection, i) for i in dict.fromkeys(spectrum_ids))
-        return ConfirmResult(confirmed, standard.strip(), (analyst or "").strip(), library_state(connection))
+        return ConfirmResult(confirmed, standard.strip(), (analyst or "").strip(), library_state(connection), doubts)
 
 
 def _require_undecided(entry: LibrarySpectrum) -> None:

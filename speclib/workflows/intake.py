@@ -83,7 +83,7 @@ def intake_manifest(
     """
     rows, bad = read_manifest(manifest)
     return _intake(
-        library, rows, [Skipped(b.file, b.reason) for b in bad], analyst, options or IntakeOptions(), progress
+        library, rows, [Skipped(b.file, b.reason, b.line) for b in bad], analyst, options or IntakeOptions(), progress
     )
 
 
@@ -125,7 +125,7 @@ def _intake_file(
             source = read_spectra(path, _reading(options.reading, row))
             orders.extend(_orders(source, row))
         except SpeclibError as error:
-            skipped.append(Skipped(row.path.name, _with_line(row, error)))
+            skipped.append(Skipped(row.path.name, _with_line(row, error), row.line or None))
     if source is None or not orders:
         return [], skipped
     taken: list[TakenSpectrum] = []
@@ -135,7 +135,7 @@ def _intake_file(
                 with transaction.step():
                     taken.append(_store(transaction, library, source, order, analyst or "", options))
             except SpeclibError as error:
-                skipped.append(Skipped(source.file_name, _with_line(order.row, error)))
+                skipped.append(Skipped(source.file_name, _with_line(order.row, error), order.row.line or None))
         transaction.detail = {
             "file": source.file_name,
             "sha256": source.sha256,

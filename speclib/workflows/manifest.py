@@ -39,6 +39,7 @@ class BadRow:
 
     file: str
     reason: str
+    line: int
 
 
 def read_manifest(path: Path) -> tuple[list[ManifestRow], list[BadRow]]:
@@ -54,7 +55,7 @@ def read_manifest(path: Path) -> tuple[list[ManifestRow], list[BadRow]]:
         try:
             rows.append(_manifest_row(path.parent, cells))
         except InvalidValueError as error:
-            bad.append(BadRow(cells["file"] or path.name, f"{path.name}, line {cells.line}: {error}"))
+            bad.append(BadRow(cells["file"] or path.name, f"{path.name}, line {cells.line}: {error}", cells.line))
     if not table:
         raise InputFileError(path.name, "has a header but no rows", advice="add one row per spectrum")
     return rows, bad
