@@ -8,7 +8,8 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 
-from speclib.annotation.checks import LOSS, Candidate, CheckContext
+from speclib.annotation.checks import LOSS
+from speclib.annotation.votes import Candidate, Unknown
 from speclib.chemistry.subformulae import subformulae_of_nominal_mz
 from speclib.model.results import Check
 
@@ -27,24 +28,23 @@ LOWEST, HIGHEST = 0.02, 0.97
 
 
 def prior_confidence(
-    candidate: Candidate, rivals: Sequence[Candidate], checks: Sequence[Check], context: CheckContext
+    candidate: Candidate, rivals: Sequence[Candidate], checks: Sequence[Check], unknown: Unknown
 ) -> float:
     """Prior probability that the composition is right.
 
-    own vote / (own vote + votes of rivals that fit the formula + unseen vote), halved for an implausible loss, limited
+    own vote / (own vote + votes of rivals + unseen vote), halved for an implausible loss, limited
     by the number and the similarity of the donors, and within 0.02 and 0.97. The two unseen votes were chosen so that,
     on principal-peak tables with each compound left out in turn, the prior is close to the share found right without a
     formula and stays below it with one.
     """
-    molecule = context.molecule
-    live = [rival for rival in rivals if molecule is None or molecule.contains(rival.formula)]
+    molecule = unknown.formula
     unseen, limit = UNSEEN_VOTE, HIGHEST
     if molecule is not None:
         only = len(subformulae_of_nominal_mz(molecule, candidate.mz)) == 1
         unseen = 0.0 if only else UNSEEN_VOTE_WITHIN_FORMULA
         if not only:
             limit = SINGLE_WITNESS_LIMIT if candidate.compounds == 1 else SEVERAL_WITNESSES_LIMIT
-    value = candidate.weight / (candidate.weight + unseen + sum(rival.weight for rival in live))
+    value = candidate.weight / (candidate.weight + unseen + sum(rival.weight for rival in rivals))
     if any(check.name == LOSS and check.passed is False for check in checks):
         value *= IMPLAUSIBLE_LOSS_FACTOR
     nearest = max(vote.similarity for vote in candidate.votes)

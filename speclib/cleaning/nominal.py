@@ -21,6 +21,11 @@ class NominalPeaks:
     position: NDArray[np.int64]
     assignment: UnitMassAssignment
 
+    def height(self, mz: int) -> float:
+        """Intensity at a whole m/z, 0 where there is no peak."""
+        i = int(np.searchsorted(self.mz, mz))
+        return float(self.intensity[i]) if i < len(self.mz) and self.mz[i] == mz else 0.0
+
 
 def bin_to_nominal_mass(spectrum: Spectrum, formula: Formula | None = None) -> NominalPeaks:
     """Put a spectrum on whole m/z; peaks that fall on the same one are added up.

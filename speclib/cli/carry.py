@@ -91,7 +91,7 @@ def _show(result: Any) -> None:
             (
                 (
                     d.rank,
-                    d.compound.name,
+                    d.compound.name + ("" if d.status.value == "confirmed" else f" ({d.status.value})"),
                     d.compound.formula,
                     number(d.similarity),
                     d.matched_peaks,
@@ -126,7 +126,7 @@ def show_proposals(proposals: Any, refused: Any) -> None:
                     p.id or "-",
                     f"{p.mz:g}",
                     f"{p.formula}+" + ("." if p.parity.value == "OE" else ""),
-                    "-" if not p.neutral_loss else p.neutral_loss,
+                    "?" if p.neutral_loss is None else (p.neutral_loss or "none"),
                     p.mechanism,
                     p.route.value,
                     number(p.confidence, 2),

@@ -48,7 +48,7 @@ def show(ctx: click.Context, case_id: int, as_json: bool) -> None:
     mass, formula = found.settings["molecular_mass"], found.settings["molecular_formula"]
     print_lines(
         [
-            f"Case {found.id} ({found.status}): {found.spectrum.label}",
+            f"Case {found.id} ({found.status}, revision {found.rev}): {found.spectrum.label}",
             f"molecular mass {mass['value'] or '-'} ({mass['origin']}), "
             f"formula {formula['value'] or '-'} ({formula['origin']}); "
             f"made at library state {found.library_state[:12]}",
@@ -81,9 +81,12 @@ def show(ctx: click.Context, case_id: int, as_json: bool) -> None:
     "--accept-from",
     type=click.FloatRange(0.0, 1.0),
     metavar="CONFIDENCE",
-    help="Accept all undecided proposals from this confidence upward; recorded as 'by rule'.",
+    help="Accept the best undecided proposal of each peak from this confidence upward; recorded as 'by rule'.",
 )
 @click.option("--revise", is_flag=True, help="Decide anew what is decided already; needs --reason.")
+@click.option(
+    "--seen-rev", type=click.IntRange(min=1), help="Revision of the case you looked at; refuse if it moved on since."
+)
 @click.option("--reason", help="Why; required for rejections and revised decisions.")
 @by_option
 @json_option
@@ -95,6 +98,7 @@ def review(
     reject: tuple[int, ...],
     accept_from: float | None,
     revise: bool,
+    seen_rev: int | None,
     reason: str | None,
     analyst: str | None,
     as_json: bool,
@@ -102,7 +106,7 @@ def review(
     """Accept or reject proposals of a case."""
     from speclib.workflows.cases import Decisions, review_case
 
-    decisions = Decisions(accept, reject, accept_from, revise)
+    decisions = Decisions(accept, reject, accept_from, revise, seen_rev)
     with open_library(ctx) as library:
         result = review_case(library, case_id, decisions, analyst=analyst, reason=reason)
     if as_json:

@@ -103,7 +103,7 @@ def run(args: list[str] | None = None) -> int:
         error.show(file=sys.stderr)
         return error.exit_code
     except (click.Abort, KeyboardInterrupt):
-        return _fail("stopped; what was finished is kept, nothing is half-written", 130)
+        return _fail("stopped; what was finished is kept, nothing is half-written")
     except BrokenPipeError:
         # The reader of a pipe has gone (`| head`): nobody is left to tell.
         os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
@@ -118,8 +118,8 @@ def run(args: list[str] | None = None) -> int:
     return outcome if isinstance(outcome, int) else 0
 
 
-def _fail(message: str, status: int = 1) -> int:
+def _fail(message: str) -> int:
     from speclib.cli.output import plain
 
     click.echo(f"speclib: {plain(message)}", err=True)
-    return status
+    return 1

@@ -34,6 +34,13 @@ class Compound:
     derivative: str | None = None
     rev: int = 1
 
+    @property
+    def identity(self) -> str:
+        """What makes two compounds the same for EI: first InChIKey block and nominal mass; else name and formula."""
+        if self.structure:
+            return f"{self.structure.skeleton}|{self.structure.nominal_mass}"
+        return f"{self.name.casefold()}|{self.formula}"
+
     def to_json(self) -> dict[str, Any]:
         """The compound as plain values."""
         s = self.structure

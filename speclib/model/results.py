@@ -20,11 +20,15 @@ def rounded(value: float | None, digits: int = 4) -> float | None:
 
 @dataclass(frozen=True)
 class Estimate:
-    """A molecular mass or formula with where it comes from; `alternatives` are (value, support or None), best first."""
+    """A molecular mass or formula with where it comes from; `alternatives` are (value, support or None), best first.
+
+    `inferred` says that the program worked it out; otherwise a person gave it or the library holds it.
+    """
 
     value: int | float | str | None
     origin: str
     alternatives: tuple[tuple[int | float | str, float | None], ...] = ()
+    inferred: bool = False
 
     def to_json(self) -> dict[str, Any]:
         """The estimate as plain values."""
@@ -143,15 +147,19 @@ class SearchResult:
 
 @dataclass(frozen=True)
 class Check:
-    """One check of a proposal: passed, failed, or None when it could not be made; the detail says it in words."""
+    """One check of a proposal: passed, failed, or None when it could not be made; the detail says it in words.
+
+    `refuses` says that a failure refuses the proposal; other failures lower its confidence.
+    """
 
     name: str
     passed: bool | None
     detail: str
+    refuses: bool = False
 
     def to_json(self) -> dict[str, Any]:
         """The check as plain values."""
-        return {"name": self.name, "passed": self.passed, "detail": self.detail}
+        return {"name": self.name, "passed": self.passed, "detail": self.detail, "refuses": self.refuses}
 
 
 @dataclass(frozen=True)

@@ -32,18 +32,59 @@ class SearchSettings:
 
 
 @dataclass(frozen=True, eq=False)
-class _Scored:
+class Scored:
+    """A reference with its score, and the forms that were compared."""
+
     row: ReferenceRow
     similarity: Similarity
     query: Peaks
     reference: Peaks
 
 
-def forms(query: Comparable, reference: Comparable, tolerance: Tolerance) -> tuple[Peaks, Peaks, Tolerance]:
-    """The two forms to compare: as measured when both are of accurate mass, else on whole m/z."""
-    if query.is_accurate and reference.is_accurate:
-        return query.accurate_peaks, reference.accurate_peaks, tolerance
+def forms(query: Comparable, reference: Comparable, settings: SearchSettings) -> tuple[Peaks, Peaks, Tolerance]:
+    """The two forms to compare: as measured when both are of accurate mass, else on whole m/z.
+
+    A measure that needs molecular masses falls back to whole m/z when an exact one is not known.
+    """
+    accurate = query.is_accurate and reference.is_accurate
+    masses_known = query.exact_mass is not None and reference.exact_mass is not None
+    if accurate and (masses_known or settings.measure is Measure.COSINE):
+        return query.accurate_peaks, reference.accurate_peaks, settings.tolerance
     return query.unit_peaks, reference.unit_peaks, UNIT_MASS_TOLERANCE
+
+
+def rank_rows(
+    query: Comparable,
+    rows: Iterable[ReferenceRow],
+    settings: SearchSettings,
+    *,
+    keep: Callable[[ReferenceRow], bool] = lambda _: True,
+    progress: Progress = SILENT,
+) -> list[Scored]:
+    """All references that match enough, best first, ties by spectrum id; replicates folded when the settings say so.
+
+    Rows that `keep` turns down are not scored. A reference without molecular mass is passed over by measures that need
+    one.
+    """
+    score = SCORES[settings.measure]
+    needs_mass = settings.measure is not Measure.COSINE
+    scored: list[Scored] = []
+    candidates = [row for row in rows if row.entry.role is Role.REFERENCE and keep(row)]
+    progress.start("search", len(candidates))
+    try:
+        for row in candidates:
+            progress.advance()
+            a, b, tolerance = forms(query, row.comparable, settings)
+            if needs_mass and (a.molecular_mass is None or b.molecular_mass is None):
+                continue
+            found = score(a, b, settings.weighting, tolerance)
+            ranked_by = found.reverse if settings.reverse else found.forward
+            if len(found.pairs) >= settings.min_matched and ranked_by >= settings.min_similarity and ranked_by > 0:
+                scored.append(Scored(row, found, a, b))
+    finally:
+        progress.finish()
+    scored.sort(key=lambda s: (-(s.similarity.reverse if settings.reverse else s.similarity.forward), s.row.entry.id))
+    return _best_of_each_compound(scored) if settings.fold_replicates else scored
 
 
 def search_rows(
@@ -54,43 +95,24 @@ def search_rows(
     keep: Callable[[ReferenceRow], bool] = lambda _: True,
     progress: Progress = SILENT,
 ) -> list[Neighbour]:
-    """Neighbours of `query` among `rows`, best first, ties by spectrum id.
-
-    Rows that `keep` turns down are not scored. A reference without molecular mass is passed over by measures that
-    need one.
-    """
-    score = SCORES[settings.measure]
-    needs_mass = settings.measure is not Measure.COSINE
-    scored: list[_Scored] = []
-    candidates = [row for row in rows if row.entry.role is Role.REFERENCE and keep(row)]
-    progress.start("search", len(candidates))
-    try:
-        for row in candidates:
-            progress.advance()
-            a, b, tolerance = forms(query, row.comparable, settings.tolerance)
-            if needs_mass and (a.molecular_mass is None or b.molecular_mass is None):
-                continue
-            found = score(a, b, settings.weighting, tolerance)
-            ranked_by = found.reverse if settings.reverse else found.forward
-            if len(found.pairs) >= settings.min_matched and ranked_by >= settings.min_similarity and ranked_by > 0:
-                scored.append(_Scored(row, found, a, b))
-    finally:
-        progress.finish()
-    scored.sort(key=lambda s: (-(s.similarity.reverse if settings.reverse else s.similarity.forward), s.row.entry.id))
-    if settings.fold_replicates:
-        scored = _best_of_each_compound(scored)
-    return [_neighbour(query, item, rank) for rank, item in enumerate(scored[: settings.top], start=1)]
+    """The best `settings.top` neighbours of `query` among `rows`, in words; order as `rank_rows`."""
+    return as_neighbours(query, rank_rows(query, rows, settings, keep=keep, progress=progress)[: settings.top])
 
 
-def _best_of_each_compound(scored: list[_Scored]) -> list[_Scored]:
-    best: dict[int, _Scored] = {}
+def as_neighbours(query: Comparable, scored: Iterable[Scored]) -> list[Neighbour]:
+    """Neighbours with ranks from 1 and what disagrees in words, which costs more than the score itself."""
+    return [_neighbour(query, item, rank) for rank, item in enumerate(scored, start=1)]
+
+
+def _best_of_each_compound(scored: list[Scored]) -> list[Scored]:
+    best: dict[str, Scored] = {}
     for item in scored:
         compound = item.row.entry.compound
-        best.setdefault(compound.id if compound else -item.row.entry.id, item)
+        best.setdefault(compound.identity if compound else f"spectrum {item.row.entry.id}", item)
     return list(best.values())
 
 
-def _neighbour(query: Comparable, item: _Scored, rank: int) -> Neighbour:
+def _neighbour(query: Comparable, item: Scored, rank: int) -> Neighbour:
     entry, reference = item.row.entry, item.row.comparable
     if entry.compound is None or entry.status is None:
         raise ValueError("a reference has a compound and a status")

@@ -1,8 +1,7 @@
 """The molecular mass of an unknown from its spectrum alone: the highest cluster, if it can be a molecular ion.
 
 Criteria (McLafferty & Turecek 1993): the highest m/z apart from isotopes, and no implausible losses (4 to 14, 21 to
-25) to the major peaks below it. Necessary, not sufficient: many classes show no molecular ion at all, and with several
-bromines or chlorines a satellite of the cluster may be taken for the reference composition.
+25) to the major peaks below it. Necessary, not sufficient: many classes show no molecular ion at all.
 """
 
 from __future__ import annotations
@@ -10,6 +9,8 @@ from __future__ import annotations
 import numpy as np
 from numpy.typing import NDArray
 
+from speclib.chemistry.formula import Formula
+from speclib.chemistry.isotopes import isotope_pattern
 from speclib.model.results import Estimate
 
 IMPLAUSIBLE_LOSSES = frozenset({*range(4, 15), *range(21, 26)})
@@ -23,6 +24,9 @@ SI29_PER_SILICON, SI30_PER_SILICON = 5.0801, 3.3527
 DALTON_PER_CARBON, DALTON_PER_SILICON = 12.0, 65.0
 """Mass that comes with a carbon at the least, and with a silicon in siloxanes and silyl ethers (73 or 74 a unit)."""
 SLACK = 1.3
+MOST_HALOGENS = 8
+LARGEST_MISFIT = 0.2
+"""Of two clusters normalised to 1 each; common practice allows some per cent per peak, no source."""
 
 
 def highest_plausible_cluster(mz: NDArray[np.float64], intensity: NDArray[np.float64]) -> Estimate:
@@ -33,15 +37,42 @@ def highest_plausible_cluster(mz: NDArray[np.float64], intensity: NDArray[np.flo
     relative = 100.0 * intensity / intensity.max()
     heights = {int(m): float(r) for m, r in zip(mz, relative, strict=True) if r >= NOISE}
     monoisotopic = [m for m in sorted(heights) if not _is_satellite(m, heights)]
-    highest = monoisotopic[-1]
+    highest = _reference_of_halogen_cluster(monoisotopic[-1], heights)
     losses = [highest - m for m in monoisotopic if heights[m] >= MAJOR and highest - m in IMPLAUSIBLE_LOSSES]
     if losses:
         reason = (
             f"the highest cluster, m/z {highest}, is no molecular ion: m/z {highest - losses[-1]} would be a loss of"
         )
-        return Estimate(None, f"{reason} {losses[-1]}")
+        return Estimate(None, f"{reason} {losses[-1]}", inferred=True)
     odd = "; an odd mass needs an odd number of N, or it is a fragment" if highest % 2 else ""
-    return Estimate(highest, f"highest plausible cluster of the spectrum{odd}")
+    return Estimate(highest, f"highest plausible cluster of the spectrum{odd}", inferred=True)
+
+
+def _reference_of_halogen_cluster(top: int, heights: dict[int, float]) -> int:
+    """The reference composition of a cluster of several Cl or Br that holds `top`: the m/z whose pattern fits best.
+
+    With Br2, Br3, Cl4 and more it is not the tallest peak of its cluster. Without a pattern that fits, `top` itself.
+    """
+    best, best_misfit = top, LARGEST_MISFIT
+    for reference in (top - 2 * step for step in range(MOST_HALOGENS + 1)):
+        if reference not in heights:
+            continue
+        for chlorine in range(MOST_HALOGENS + 1):
+            for bromine in range(MOST_HALOGENS + 1 - chlorine):
+                if chlorine + bromine < 2:
+                    continue
+                misfit = _misfit(reference, isotope_pattern(Formula.of({"Cl": chlorine, "Br": bromine})), heights)
+                if misfit < best_misfit:
+                    best, best_misfit = reference, misfit
+    return best
+
+
+def _misfit(reference: int, pattern: dict[int, float], heights: dict[int, float]) -> float:
+    """Sum of differences of two normalised clusters in steps of 2, one step beyond the pattern on either side."""
+    offsets = range(-2, max(pattern) + 3, 2)
+    seen = np.array([heights.get(reference + offset, 0.0) for offset in offsets])
+    expected = np.array([pattern.get(offset, 0.0) for offset in offsets])
+    return float(np.abs(seen / seen.sum() - expected / expected.sum()).sum())
 
 
 def _is_satellite(m: int, heights: dict[int, float]) -> bool:

@@ -31,13 +31,10 @@ class PeakPair:
 def candidate_pairs(mz_a: Array, mz_b: Array, tolerance: Tolerance, shift: float = 0.0) -> list[PeakPair]:
     """All pairs with |mz_a - (mz_b + shift)| within the tolerance, in order of a, then b."""
     moved = mz_b + shift
-    found: list[PeakPair] = []
-    for a, mz in enumerate(mz_a):
-        width = tolerance.at(float(mz)) + _ROUNDING
-        first = int(np.searchsorted(moved, mz - width, side="left"))
-        last = int(np.searchsorted(moved, mz + width, side="right"))
-        found.extend(PeakPair(a, b, shift != 0.0) for b in range(first, last))
-    return found
+    width = np.array([tolerance.at(float(mz)) for mz in mz_a]) + _ROUNDING
+    first = np.searchsorted(moved, mz_a - width, side="left")
+    last = np.searchsorted(moved, mz_a + width, side="right")
+    return [PeakPair(int(a), b, shift != 0.0) for a in np.flatnonzero(last > first) for b in range(first[a], last[a])]
 
 
 def pair_peaks_greedy(

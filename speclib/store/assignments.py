@@ -58,6 +58,24 @@ def accepted_assignments(connection: sqlite3.Connection, compound_id: int) -> li
     )
 
 
+def donor_assignments(connection: sqlite3.Connection, compound_id: int) -> list[Assignment]:
+    """Accepted assignments of a compound that can be carried: those that were not carried themselves.
+
+    A carried assignment is no independent evidence: it would vote for what it came from.
+    """
+    accepted = accepted_assignments(connection, compound_id)
+    return [a for a in accepted if a.origin is not AssignmentOrigin.CARRIED]
+
+
+def compounds_with_donor_assignments(connection: sqlite3.Connection) -> set[int]:
+    """Ids of the compounds that have at least one assignment to carry."""
+    rows = connection.execute(
+        "SELECT DISTINCT p.compound_id FROM assignments a JOIN spectra p ON p.id = a.spectrum_id "
+        "WHERE a.state = 'accepted' AND a.origin <> 'carried' AND p.role = 'reference' AND p.status <> 'withdrawn'"
+    )
+    return {row[0] for row in rows}
+
+
 def _select(
     connection: sqlite3.Connection,
     where: str,

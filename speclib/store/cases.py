@@ -213,7 +213,7 @@ def _proposals(connection: sqlite3.Connection, case_id: int, spectrum: LibrarySp
 
 
 def _proposal(row: sqlite3.Row, spectrum: LibrarySpectrum, votes: tuple[DonorVote, ...]) -> Proposal:
-    checks = tuple(Check(c["name"], c["passed"], c["detail"]) for c in json.loads(row["checks"]))
+    checks = tuple(Check(c["name"], c["passed"], c["detail"], c["refuses"]) for c in json.loads(row["checks"]))
     refused = row["state"] == AssignmentState.REFUSED.value
     return Proposal(
         peak=row["peak"],
@@ -228,7 +228,7 @@ def _proposal(row: sqlite3.Row, spectrum: LibrarySpectrum, votes: tuple[DonorVot
         confidence=row["confidence"],
         confidence_basis="prior" if row["calibration_id"] is None else "reliability",
         reason=row["reason"],
-        refused_by=next((c.name for c in checks if c.passed is False), None) if refused else None,
+        refused_by=next((c.name for c in checks if c.passed is False and c.refuses), None) if refused else None,
         id=row["id"],
         state=row["state"],
         rev=row["rev"],

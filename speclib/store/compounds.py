@@ -70,7 +70,12 @@ def compounds_by_id(connection: sqlite3.Connection, ids: Iterable[int]) -> dict[
 
 
 def find_compounds(connection: sqlite3.Connection, text: str) -> list[Compound]:
-    """Compounds that `text` may mean: an id, an InChIKey, a CAS number, or a name or synonym without regard to case."""
+    """Compounds that `text` may mean: as `find_compounds_by_name`, or else an id."""
+    return find_compounds_by_name(connection, text) or _compound_of_number(connection, " ".join(text.split()))
+
+
+def find_compounds_by_name(connection: sqlite3.Connection, text: str) -> list[Compound]:
+    """Compounds of that InChIKey, CAS number, name or synonym, without regard to case; never of that id."""
     wanted = " ".join(text.split())
     if not is_storable(wanted):
         return []
@@ -89,7 +94,7 @@ def find_compounds(connection: sqlite3.Connection, text: str) -> list[Compound]:
         folded = wanted.casefold()
         ids = [row["id"] for row in _all_names(connection) if row["name"].casefold() == folded]
         return list(compounds_by_id(connection, ids).values())
-    return _compound_of_number(connection, wanted)
+    return []
 
 
 def _compound_of_number(connection: sqlite3.Connection, wanted: str) -> list[Compound]:

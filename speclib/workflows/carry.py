@@ -2,20 +2,23 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass, field, replace
 from typing import Any
 
-from speclib.annotation.carry import RULES_VERSION, Donor, Unknown, carry_assignments
+from speclib.annotation.carry import RULES_VERSION, carry_assignments
+from speclib.annotation.votes import Donor, Unknown
 from speclib.chemistry.formula import Formula, parse_formula
 from speclib.clock import utc_text
 from speclib.curation.intake_checks import check_at_intake
 from speclib.formats.reading import ReadOptions
 from speclib.model.entry import Role
-from speclib.model.results import CarryResult, Difference, Neighbour
+from speclib.model.results import CarryResult, Difference, Estimate, Neighbour
 from speclib.progress import SILENT, Progress
-from speclib.search.exact import DEFAULT_MIN_MATCHED, SearchSettings, search_rows
+from speclib.search.exact import DEFAULT_MIN_MATCHED, Scored, SearchSettings, as_neighbours, rank_rows
+from speclib.search.rows import Comparable, ReferenceRow
 from speclib.similarity.scores import Measure
-from speclib.store.assignments import accepted_assignments
+from speclib.store.assignments import compounds_with_donor_assignments, donor_assignments
 from speclib.store.cases import Case, get_case, insert_case, open_cases_of
 from speclib.store.library import Library
 from speclib.store.spectra import insert_findings, insert_source, insert_spectrum, spectra_with_content
@@ -74,27 +77,22 @@ def carry_to_unknown(
         min_matched=request.min_matched,
         top=None,
     )
-    neighbours = search_rows(query, rows, settings, keep=keep, progress=progress)
-    by_id = {row.entry.id: row.comparable for row in rows}
-    with library.reading() as connection:
-        candidates = [
-            Donor(n, by_id[n.spectrum_id], tuple(accepted_assignments(connection, n.compound.id))) for n in neighbours
-        ]
-    donors = [donor for donor in candidates if donor.assignments][: request.most_donors]
-    proposals, refused = carry_assignments(Unknown(query, query.nominal_mass, query.formula), donors)
+    ranked = rank_rows(query, rows, settings, keep=_keeps_relatives(asked, keep), progress=progress)
+    donors = _donors(library, query, ranked, request.most_donors)
+    proposals, refused = carry_assignments(Unknown(query, query.nominal_mass, query.formula, not mass.inferred), donors)
     result = CarryResult(
         unknown=asked.query,
         library_state=state,
         molecular_mass=mass,
         molecular_formula=formula,
-        donors=tuple(replace(d.neighbour, rank=rank) for rank, d in enumerate(donors, start=1)),
+        donors=tuple(d.neighbour for d in donors),
         proposals=tuple(proposals),
         refused=tuple(refused),
         difference=_difference(query.formula, query.nominal_mass, donors[0].neighbour if donors else None),
         remarks=(
             *reading_remarks(asked),
             *mass_remarks(query),
-            *_remarks(request, given.nominal_mass is None, query.formula, neighbours, donors, mass.value),
+            *_remarks(request, query.formula, bool(ranked), donors, mass),
         ),
     )
     if not save:
@@ -102,16 +100,30 @@ def carry_to_unknown(
     return _save(library, request, asked, result, analyst)
 
 
+def _keeps_relatives(asked: Asked, keep: Callable[[ReferenceRow], bool]) -> Callable[[ReferenceRow], bool]:
+    """A stored reference takes nothing from its own compound: that would be no carrying."""
+    own = asked.entry.compound.identity if asked.entry and asked.entry.compound else None
+    if own is None:
+        return keep
+    return lambda row: keep(row) and (row.entry.compound is None or row.entry.compound.identity != own)
+
+
+def _donors(library: Library, query: Comparable, ranked: Sequence[Scored], most: int) -> list[Donor]:
+    """The nearest references whose compounds have assignments to carry."""
+    with library.reading() as connection:
+        able = compounds_with_donor_assignments(connection)
+        chosen = [s for s in ranked if s.row.entry.compound and s.row.entry.compound.id in able][:most]
+        return [
+            Donor(neighbour, scored.row.comparable, tuple(donor_assignments(connection, neighbour.compound.id)))
+            for neighbour, scored in zip(as_neighbours(query, chosen), chosen, strict=True)
+        ]
+
+
 def _remarks(
-    request: CarryRequest,
-    inferred: bool,
-    formula: Formula | None,
-    neighbours: list[Neighbour],
-    donors: list[Donor],
-    mass: object,
+    request: CarryRequest, formula: Formula | None, has_neighbours: bool, donors: Sequence[Donor], mass: Estimate
 ) -> list[str]:
     remarks = []
-    if not neighbours:
+    if not has_neighbours:
         remarks.append(
             f"a stranger: no reference reaches a similarity of {request.min_similarity:g} with {request.min_matched} "
             "matched peaks, so nothing is carried"
@@ -123,9 +135,9 @@ def _remarks(
             f"no donor is a near relative (the best similarity is {donors[0].neighbour.similarity:.2f}): "
             "take every proposal with great caution"
         )
-    if inferred and mass is not None:
-        remarks.append(f"the molecular mass {mass} is inferred from the spectrum; give --mass if you know it")
-    elif mass is None:
+    if mass.inferred and mass.value is not None:
+        remarks.append(f"the molecular mass {mass.value} is inferred from the spectrum; give --mass if you know it")
+    elif mass.value is None:
         remarks.append("the molecular mass is not known, so donors were found by direct peaks only; give --mass")
     if formula is None:
         remarks.append("the molecular formula is not known, so same-loss is left out; give --formula")

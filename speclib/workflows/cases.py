@@ -16,12 +16,16 @@ from speclib.store.trail import library_state
 
 @dataclass(frozen=True)
 class Decisions:
-    """What a reviewer decides: proposals by number, or all undecided ones from a confidence upward (`by rule`)."""
+    """What a reviewer decides: proposals by number, or the best undecided one of each peak from a confidence on.
+
+    The latter is recorded as `by rule`. `seen_rev` is the revision of the case that the reviewer looked at.
+    """
 
     accept: tuple[int, ...] = ()
     reject: tuple[int, ...] = ()
     accept_from: float | None = None
     revise: bool = False
+    seen_rev: int | None = None
 
 
 @dataclass(frozen=True)
@@ -68,6 +72,8 @@ def review_case(
         if case.status != "open":
             raise RefusedError(f"case {case_id} is {case.status}", "decisions are made on open cases")
         plan = _plan(case, decisions)
+        if plan:
+            transaction.update("cases", case_id, expected_rev=decisions.seen_rev)
         for proposal, state, how in plan:
             transaction.update(
                 "assignments",
@@ -116,11 +122,13 @@ def _plan(case: Case, decisions: Decisions) -> list[_Planned]:
     add(decisions.reject, AssignmentState.REJECTED, None)
     if decisions.accept_from is not None:
         named = {*decisions.accept, *decisions.reject}
+        best = {p.peak: p.id for p in sorted(case.proposals, key=lambda p: p.confidence or 0.0)}
         plan += [
             (p, AssignmentState.ACCEPTED, "by rule")
             for p in case.proposals
             if p.state == AssignmentState.PROPOSED.value
             and p.id not in named
+            and p.id == best[p.peak]
             and (p.confidence or 0.0) >= decisions.accept_from
         ]
     return plan

@@ -16,7 +16,7 @@ from speclib.store.assignments import accepted_assignments
 from speclib.store.compounds import (
     compounds_by_id,
     find_by_inchikey,
-    find_compounds,
+    find_compounds_by_name,
     get_compound,
     insert_compound,
     list_compounds,
@@ -162,7 +162,7 @@ def write_compound(transaction: WriteTransaction, checked: CheckedCompound) -> i
                 f"the structure of {new.name} is held already as compound {held.id} ({held.name})",
                 "use that one",
             )
-    named = [c for c in find_compounds(connection, new.name) if c.name.casefold() == new.name.casefold()]
+    named = [c for c in find_compounds_by_name(connection, new.name) if c.name.casefold() == new.name.casefold()]
     if named:
         raise RefusedError(
             f"a compound called {named[0].name} is held already (compound {named[0].id})",

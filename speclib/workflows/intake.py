@@ -9,7 +9,7 @@ from pathlib import Path
 from speclib.chemistry.formula import parse_formula
 from speclib.clock import utc_text
 from speclib.curation.intake_checks import check_at_intake
-from speclib.errors import InputFileError, RefusedError, SignatureMissingError, SpeclibError
+from speclib.errors import InputFileError, LibraryError, RefusedError, SignatureMissingError, SpeclibError
 from speclib.formats.reading import ReadOptions, read_spectra
 from speclib.model.compound import Compound
 from speclib.model.entry import LibrarySpectrum, Role, Status
@@ -17,7 +17,7 @@ from speclib.model.finding import Finding, Severity
 from speclib.model.intake import IntakeResult, Skipped, TakenSpectrum
 from speclib.model.spectrum import SourceFile, SourceSpectrum
 from speclib.progress import SILENT, Progress
-from speclib.store.compounds import compounds_by_id, find_by_inchikey, find_compounds
+from speclib.store.compounds import compounds_by_id, find_by_inchikey, find_compounds_by_name
 from speclib.store.library import Library
 from speclib.store.spectra import (
     get_spectrum,
@@ -104,7 +104,11 @@ def _intake(
     progress.start("intake", len(by_file))
     try:
         for path, its_rows in by_file.items():
-            more, refused = _intake_file(library, path, its_rows, analyst, options)
+            try:
+                more, refused = _intake_file(library, path, its_rows, analyst, options)
+            except LibraryError as error:
+                # The files before this one are in the library: say so by going on to the result, not by ending here.
+                more, refused = [], [Skipped(path.name, str(error))]
             taken.extend(more)
             skipped.extend(refused)
             progress.advance(path.name)
@@ -120,12 +124,16 @@ def _intake_file(
     orders: list[_Order] = []
     skipped: list[Skipped] = []
     source: SourceFile | None = None
+    read: dict[ReadOptions, SourceFile] = {}
     for row in rows:
         try:
-            source = read_spectra(path, _reading(options.reading, row))
+            reading = _reading(options.reading, row)
+            if reading not in read:
+                read[reading] = read_spectra(path, reading)
+            source = read[reading]
             orders.extend(_orders(source, row))
         except SpeclibError as error:
-            skipped.append(Skipped(row.path.name, _with_line(row, error), row.line or None))
+            skipped.append(Skipped(row.path.name or str(row.path), _with_line(row, error), row.line or None))
     if source is None or not orders:
         return [], skipped
     taken: list[TakenSpectrum] = []
@@ -207,7 +215,8 @@ def _store(
             remark += f"; what this row says differently was NOT taken over: {', '.join(differing)}"
         return _taken(found, held.id, compound, _status_text(held), (), already_held=True, remark=remark)
     formula = parse_formula(compound.formula) if compound and compound.formula else None
-    findings = check_at_intake(found, formula, same if not options.replicate else ())
+    others = [e for e in same if not _is_of(e, compound)] if options.replicate else same
+    findings = check_at_intake(found, formula, others)
     if order.row.status is Status.CONFIRMED:
         require_gate(compound, order.row.standard, [f.reason for f in findings if f.severity is Severity.FAULT])
     spectrum_id = insert_spectrum(
@@ -244,12 +253,12 @@ def _compound(transaction: WriteTransaction, order: _Order) -> Compound | None:
         held = find_by_inchikey(connection, order.compound.structure.inchikey)
         if held is None:
             return _new_compound(transaction, order.compound)
-        _require_name_free(find_compounds(connection, order.compound.new.name), held, order.compound.new.name)
+        _require_name_free(find_compounds_by_name(connection, order.compound.new.name), held, order.compound.new.name)
         return held
     wanted = order.compound.new.name if order.compound else order.existing_name
     if wanted is None:
         return None
-    found = find_compounds(connection, wanted)
+    found = find_compounds_by_name(connection, wanted)
     if len(found) == 1:
         return found[0]
     if found:
@@ -278,9 +287,15 @@ def _new_compound(transaction: WriteTransaction, checked: CheckedCompound) -> Co
 def _held(same: Sequence[LibrarySpectrum], compound: Compound | None) -> LibrarySpectrum | None:
     """A held spectrum that makes storing these peaks again pointless: of the same compound, or any for an unknown."""
     for entry in same:
-        if compound is None or (entry.compound is not None and entry.compound.id == compound.id):
+        if compound is None or _is_of(entry, compound):
             return entry
     return None
+
+
+def _is_of(entry: LibrarySpectrum, compound: Compound | None) -> bool:
+    """Whether a held spectrum belongs to the compound (an unknown to none)."""
+    held = entry.compound.id if entry.compound else None
+    return held == (compound.id if compound else None)
 
 
 def _differing(held: LibrarySpectrum, order: _Order) -> list[str]:

@@ -6,6 +6,7 @@ from dataclasses import dataclass
 from pathlib import Path
 from typing import Any
 
+from speclib.chemistry.cas import is_valid_cas
 from speclib.errors import InputFileError, InvalidValueError
 from speclib.formats.tables import TableRow, number_in_cell, read_table, whole_number_in_cell
 from speclib.model.entry import Status
@@ -64,6 +65,10 @@ def read_manifest(path: Path) -> tuple[list[ManifestRow], list[BadRow]]:
 def _manifest_row(folder: Path, cells: TableRow) -> ManifestRow:
     if not cells["file"]:
         raise InvalidValueError("the column file is empty", "name the file of the spectrum")
+    if cells["cas"] and not is_valid_cas(cells["cas"]):
+        raise InvalidValueError(
+            f"{cells['cas']!r} is not a CAS number (form or check digit is wrong)", "check the digits"
+        )
     compound = None
     if cells["compound"] or cells["smiles"]:
         compound = NewCompound(

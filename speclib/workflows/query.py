@@ -6,6 +6,7 @@ from dataclasses import dataclass, replace
 from pathlib import Path
 
 from speclib.chemistry.formula import Formula, parse_formula, require_closed_shell
+from speclib.chemistry.unit_mass import HIGHEST_DEFECT, LOWEST_DEFECT
 from speclib.curation.intake_checks import check_at_intake
 from speclib.errors import AmbiguousEntryError, EntryNotFoundError, InputFileError, InvalidValueError
 from speclib.formats.reading import ReadOptions, read_spectra
@@ -20,10 +21,6 @@ from speclib.workflows.manifest import phase_named
 
 MOST_ISOTOPE_STEPS = 8
 """Satellites of polyhalogenated molecular ions reach some steps above the reference composition."""
-AMBIGUOUS_FRACTION = 0.35
-"""An exact mass further than this from a whole number does not tell the nominal mass safely (C40H82: 562.642 is
-562).
-"""
 
 
 @dataclass(frozen=True)
@@ -149,9 +146,10 @@ def reading_remarks(asked: Asked) -> list[str]:
 def _nominal(value: float, is_exact: bool, known: Formula | None) -> int:
     if known is not None and is_exact and abs(value - known.exact_mass) <= 0.05:
         return known.nominal_mass
-    if is_exact and abs(value - round(value)) > AMBIGUOUS_FRACTION:
+    possible = [n for n in (int(value), int(value) + 1) if LOWEST_DEFECT * n <= value - n <= HIGHEST_DEFECT * n]
+    if is_exact and len(possible) != 1:
         raise InvalidValueError(f"the exact mass {value} does not tell the nominal mass safely", "give --formula too")
-    return round(value)
+    return possible[0] if is_exact else round(value)
 
 
 def comparable_query(asked: Asked, given: Molecule) -> tuple[Comparable, Estimate, Estimate]:

@@ -7,7 +7,6 @@ from dataclasses import dataclass, field
 
 from speclib.errors import InvalidValueError
 from speclib.formats.reading import ReadOptions
-from speclib.model.compound import Compound
 from speclib.model.results import SearchResult
 from speclib.progress import SILENT, Progress
 from speclib.search.exact import SearchSettings, search_rows
@@ -59,7 +58,7 @@ def search_library(library: Library, request: SearchRequest, *, progress: Progre
     rows, keep, state = reference_rows(library, asked, request.exclude_compounds, confirmed_only=request.confirmed_only)
     neighbours = search_rows(query, rows, request.settings, keep=keep, progress=progress)
     remarks = [*reading_remarks(asked), *mass_remarks(query)]
-    if request.settings.measure is not Measure.COSINE and given.nominal_mass is None:
+    if request.settings.measure is not Measure.COSINE and mass.inferred:
         remarks.append(f"the molecular mass {mass.value} is inferred ({mass.origin}); give --mass if you know it")
     if not neighbours:
         remarks.append("no reference matches enough peaks")
@@ -88,7 +87,7 @@ def reference_rows(
     """
     with library.reading() as connection:
         entries = searchable_references(connection)
-        excluded = [get_compound(connection, text) for text in exclude]
+        excluded = {get_compound(connection, text).identity for text in exclude}
         state = library_state(connection)
     own = asked.entry.id if asked.entry else None
 
@@ -96,16 +95,6 @@ def reference_rows(
         entry = row.entry
         if entry.id == own or (confirmed_only and entry.status is not None and entry.status.value != "confirmed"):
             return False
-        return entry.compound is None or not any(is_same_compound(entry.compound, other) for other in excluded)
+        return entry.compound is None or entry.compound.identity not in excluded
 
     return [reference_row(entry) for entry in entries], keep, state
-
-
-def is_same_compound(a: Compound, b: Compound) -> bool:
-    """Same first InChIKey block and nominal mass; without structure, same name and formula (DESIGN section 4)."""
-    if a.structure and b.structure:
-        return (a.structure.skeleton, a.structure.nominal_mass) == (
-            b.structure.skeleton,
-            b.structure.nominal_mass,
-        )
-    return a.name.casefold() == b.name.casefold() and a.formula == b.formula

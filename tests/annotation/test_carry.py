@@ -6,8 +6,9 @@ from dataclasses import replace
 
 import pytest
 
-from speclib.annotation.carry import Donor, Unknown, carry_assignments
+from speclib.annotation.carry import carry_assignments
 from speclib.annotation.checks import DONORS, FORMULA, ISOTOPES, LOSS, MASS, PARITY
+from speclib.annotation.votes import Donor, Unknown
 from speclib.chemistry.formula import Formula, parse_formula
 from speclib.model.assignment import Assignment, AssignmentOrigin, AssignmentState, Parity, Route
 from speclib.model.compound import Compound, Structure
@@ -191,11 +192,18 @@ def test_replicates_of_a_donor_do_not_vote_twice() -> None:
 
 
 def test_an_implausible_loss_lowers_the_confidence_but_is_shown() -> None:
-    proposals, _ = carried({**OCTANONE, 118.0: 5.0, 85.0: 5.0}, "C8H16O", 128, [(HEXANONE, HEXANONE_IONS)])
-    assert all(check(p, LOSS)[0] for p in proposals)
-    fourteen, _ = carried({43: 100, 58: 50, 85: 10, 99: 20}, "C6H11O", 99, [(HEXANONE, HEXANONE_IONS)])
-    ion = at(fourteen, 85)["C5H9O"]
-    assert check(ion, LOSS) == (False, "a loss of CH2 (14) from the molecular ion is implausible")
+    near = {43.0: 100.0, 58.0: 50.0, 86.0: 10.0, 100.0: 5.0}
+    sixteen = {43.0: 100.0, 58.0: 50.0, 86.0: 10.0, 102.0: 5.0}
+    donor_ions: Ions = [(86, "C4H6O2", "x")]
+    donor = reference(7, "donor", "C7H12O2", {43: 100, 58: 50, 86: 10, 128: 5})
+    doubtful, _ = carried(near, "C5H8O2", 100, [(donor, donor_ions)])
+    plausible, _ = carried(sixteen, "C5H10O2", 102, [(donor, donor_ions)])
+    assert check(at(doubtful, 86)["C4H6O2"], LOSS) == (
+        False,
+        "a loss of CH2 (14) from the molecular ion is implausible",
+    )
+    assert check(at(plausible, 86)["C4H6O2"], LOSS)[0] is True
+    assert (at(doubtful, 86)["C4H6O2"].confidence or 0) < 0.7 * (at(plausible, 86)["C4H6O2"].confidence or 0)
 
 
 def test_accurate_mass_decides_between_compositions() -> None:
@@ -204,6 +212,58 @@ def test_accurate_mass_decides_between_compositions() -> None:
     proposals, refused = carried(peaks, "C8H16O", 128, [(HEXANONE, donor_ions)], MassAccuracy.ACCURATE)
     assert at(refused, 43.0542)["C2H3O"].refused_by == MASS
     assert "C3H6O" in at(proposals, 58.0413)
+
+
+def test_two_accurate_peaks_of_one_nominal_mass_each_get_their_own_ion() -> None:
+    alkane = reference(5, "hexane", "C6H14", {29: 40, 41: 60, 43: 75, 57: 100, 86: 15})
+    peaks = {43.0178: 60.0, 43.0542: 100.0, 58.0413: 50.0, 128.1196: 5.0}
+    donors = [(HEXANONE, [(43.0, "C2H3O", "alpha-cleavage")]), (alkane, [(43.0, "C3H7", "sigma cleavage")])]
+    proposals, refused = carried(peaks, "C8H16O", 128, donors, MassAccuracy.ACCURATE)
+    assert set(at(proposals, 43.0178)) == {"C2H3O"}
+    assert set(at(proposals, 43.0542)) == {"C3H7"}
+    assert not [p for p in refused if p.refused_by == MASS]
+
+
+def test_what_the_molecule_cannot_hold_does_not_explain_satellites() -> None:
+    bromo = reference(8, "bromo donor", "C5H9Br", {43: 40, 69: 100, 107: 60, 109: 60, 148: 20})
+    arene = reference(9, "arene donor", "C9H12O", {43: 40, 69: 20, 107: 100, 109: 60, 136: 40})
+    peaks = {43.0: 30.0, 107.0: 100.0, 109.0: 60.0, 136.0: 20.0}
+    donors = [(bromo, [(107.0, "C2H4Br", "x")]), (arene, [(109.0, "C7H9O", "y"), (107.0, "C8H11", "z")])]
+    proposals, refused = carried(peaks, "C9H12O", 136, donors)
+    assert at(refused, 107)["C2H4Br"].refused_by == FORMULA
+    assert "C7H9O" in at(proposals, 109)
+
+
+def test_stereoisomers_are_one_witness() -> None:
+    trans = HEXANONE
+    key = trans.entry.compound.structure if trans.entry.compound else None
+    assert key is not None
+    other = replace(key, inchikey=key.inchikey.replace("UHFFFAOYSA", "VOTSOKGWSA"))
+    compound = replace(trans.entry.compound, id=77, uid="c77", name="stereoisomer", structure=other)  # type: ignore[type-var]
+    cis = replace(trans, entry=replace(trans.entry, id=77, uid="s77", compound=compound))
+    alone, _ = carried(OCTANONE, "C8H16O", 128, [(trans, HEXANONE_IONS)])
+    both, _ = carried(OCTANONE, "C8H16O", 128, [(trans, HEXANONE_IONS), (cis, HEXANONE_IONS)])
+    assert [(p.formula, p.confidence) for p in both] == [(p.formula, p.confidence) for p in alone]
+
+
+def test_a_donor_whose_record_breaks_the_nitrogen_rule_is_refused() -> None:
+    rows = [(HEXANONE, HEXANONE_IONS)]
+    spectrum = Spectrum.of(sorted(OCTANONE), [OCTANONE[m] for m in sorted(OCTANONE)])
+    query = Comparable(spectrum, parse_formula("C8H16O"), 128)
+    (neighbour,) = search_rows(query, [HEXANONE], SearchSettings(measure=Measure.SHIFTED, min_matched=1))
+    wrong = tuple(replace(a, parity=Parity.OE) for a in accepted(HEXANONE, HEXANONE_IONS) if a.formula == "C2H3O")
+    donor = Donor(neighbour, rows[0][0].comparable, wrong)
+    _, refused = carry_assignments(Unknown(query, 128, parse_formula("C8H16O")), [donor])
+    assert {p.refused_by for p in refused} == {PARITY}
+
+
+def test_a_minor_ion_of_a_donor_does_not_outvote_a_major_one() -> None:
+    major = reference(10, "major", "C6H12O", {43: 100, 58: 55, 85: 7, 100: 8})
+    minor = reference(11, "minor", "C6H12O", {43: 1, 58: 55, 85: 7, 100: 8})
+    for row, least in ((major, True), (minor, False)):
+        proposals, _ = carried(OCTANONE, "C8H16O", 128, [(row, [(43, "C2H3O", "x")])])
+        weight = at(proposals, 43)["C2H3O"].donors[0].weight / at(proposals, 43)["C2H3O"].donors[0].similarity ** 4
+        assert (weight > 0.7) is least
 
 
 @pytest.mark.parametrize("formula", ["C8H16O", None])

@@ -217,14 +217,13 @@ def test_a_saved_case_tells_what_carry_told(speclib: Any, library: Path) -> None
     shown = document(speclib(*L, "case", "show", str(saved["case_id"]), "--json"))
 
     def told(proposals: Any) -> Any:
-        return sorted(
-            (p["mz"], p["formula"], p["neutral_loss"], p["route"], p["confidence"], p["reason"],
-             json.dumps(p["checks"]), json.dumps(sorted(d["assignment_id"] for d in p["donors"])))
-            for p in proposals
-        )  # fmt: skip
+        bare_of_ids = [{key: value for key, value in p.items() if key != "id"} for p in proposals]
+        for p in bare_of_ids:
+            p["donors"] = sorted(p["donors"], key=lambda d: (d["assignment_id"], d["route"]))
+        return sorted(bare_of_ids, key=lambda p: (p["mz"], p["formula"]))
 
     assert told(bare["proposals"]) == told(saved["proposals"]) == told(shown["proposals"])
-    assert told(bare["refused"]) == told(shown["refused"])
+    assert told(bare["refused"]) == told(saved["refused"]) == told(shown["refused"])
     assert bare["difference"] == {"mass": 14, "formulas": ["+CH2"], "interpretation": None, "atoms": []}
 
 
@@ -349,3 +348,77 @@ def test_search_and_carry_show_the_caution(speclib: Any, library: Path) -> None:
     assert library.exists()
     for args in ((*L, "search", "unknown.txt"), (*CARRY, "--no-save")):
         assert "authentic standard" in ok(speclib(*args)).err
+
+
+def test_a_number_as_a_name_in_a_manifest_is_a_name_and_no_id(speclib: Any, library: Path) -> None:
+    assert library.exists()
+    Path("number.csv").write_text("file,compound,status,standard\nunknown.txt,1,confirmed,lot\n", encoding="utf-8")
+    outcome = speclib(*L, "intake", "--manifest", "number.csv", *BY, "--json")
+    assert outcome.status == 1
+    assert "no compound '1'" in outcome.document["skipped"][0]["reason"]
+
+
+def test_a_replicate_does_not_silence_the_doubt_about_another_compound(speclib: Any, library: Path) -> None:
+    assert library.exists()
+    args = ("intake", "heptanone.txt", "--compound", "3-heptanone", "--smiles", "CCCCC(=O)CC", "--replicate")
+    taken = document(speclib(*L, *args, *BY, "--json"))["spectra"][0]
+    assert [f["check"] for f in taken["findings"]] == ["identical peaks"]
+
+
+def test_carrying_to_a_reference_takes_nothing_from_its_own_compound(speclib: Any, library: Path) -> None:
+    assert library.exists()
+    found = document(speclib(*L, "carry", "1", "--no-save", "--json"))
+    assert {d["compound"]["name"] for d in found["donors"]} == {"2-heptanone"}
+
+
+def test_a_carried_assignment_is_no_evidence_for_others(speclib: Any, library: Path) -> None:
+    assert library.exists()
+    case = document(speclib(*L, "carry", "2", *BY, "--json"))["case_id"]
+    ok(speclib(*L, "review", case, "--accept-from", "0.5", *BY))
+    found = document(speclib(*L, "carry", "3", "--no-save", "--json"))
+    manual = {a["id"] for a in _all_manual(speclib) if a["origin"] == "manual"}
+    assert {d["assignment_id"] for p in found["proposals"] for d in p["donors"]} <= manual
+
+
+def test_accurate_spectra_find_their_relatives_with_a_nominal_mass(speclib: Any, library: Path) -> None:
+    assert library.exists()
+    head = "# mass_accuracy: accurate\n# mz_from: 25\n# mz_to: 300\n"
+    Path("acc.txt").write_text(head + "43.0178\t900\n58.0413\t500\n71.0491\t50\n85.0648\t60\n100.0883\t80\n", "utf-8")
+    Path("hom.txt").write_text(head + "43.0178\t900\n58.0413\t600\n71.0491\t60\n113.0961\t50\n128.1196\t50\n", "utf-8")
+    ok(speclib(*L, "intake", "acc.txt", "--compound", "2-hexanone", *BY))
+    found = document(
+        speclib(*L, "search", "hom.txt", "--mass", "128", "--measure", "shifted", "--all-replicates", "--json")
+    )
+    assert 5 in [n["spectrum_id"] for n in found["neighbours"]]
+
+
+def test_a_reviewer_who_looked_at_an_older_state_of_the_case_is_told(speclib: Any, library: Path) -> None:
+    assert library.exists()
+    first, second, *_ = (p["id"] for p in document(speclib(*CARRY, *BY, "--json"))["proposals"])
+    rev = document(speclib(*L, "case", "show", "1", "--json"))["rev"]
+    ok(speclib(*L, "review", "1", "--accept", first, "--seen-rev", rev, *BY))
+    late = speclib(*L, "review", "1", "--accept", second, "--seen-rev", rev, *BY)
+    assert late.status == 1
+    assert "changed by somebody else" in late.err
+    ok(speclib(*L, "review", "1", "--accept", second, "--seen-rev", rev + 1, *BY))
+
+
+def test_a_lock_in_the_middle_of_a_batch_leaves_a_full_account(
+    speclib: Any, library: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    from speclib.errors import LibraryBusyError
+    from speclib.workflows import intake
+
+    assert library.exists()
+    store = intake._intake_file
+
+    def busy_at_the_second(library: Any, path: Path, *rest: Any) -> Any:
+        if path.name == "stranger.txt":
+            raise LibraryBusyError("the library is in use by another process", "try again in a moment")
+        return store(library, path, *rest)
+
+    monkeypatch.setattr(intake, "_intake_file", busy_at_the_second)
+    outcome = speclib(*L, "intake", "unknown.txt", "stranger.txt", *BY, "--json")
+    assert outcome.status == 1
+    assert [s["file"] for s in outcome.document["spectra"]] == ["unknown.txt"]
+    assert outcome.document["skipped"][0]["file"] == "stranger.txt"

@@ -26,7 +26,7 @@ def row(
     measurement: Measurement | None = None,
 ) -> ReferenceRow:
     which = compound if compound is not None else number
-    structure = Structure("S", "K", "K", formula, mass, float(mass))
+    structure = Structure("S", f"K{which}", f"K{which}", formula, mass, float(mass))
     return reference_row(
         LibrarySpectrum(
             number,

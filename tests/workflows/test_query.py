@@ -31,6 +31,19 @@ def test_the_nominal_mass_of_a_large_alkane_comes_from_its_formula() -> None:
         given_molecule("562.642", None)
 
 
+def test_an_exact_mass_that_fits_two_nominal_masses_is_asked_about() -> None:
+    # C45H92: exact 632.720, nominal 632; 633 would be possible for another composition.
+    with pytest.raises(InvalidValueError, match="--formula"):
+        given_molecule("632.72", None)
+    assert given_molecule("632.72", "C45H92").nominal_mass == 632
+
+
+@pytest.mark.parametrize("formula", ["C9H17O2", "C2H40", "CH5"])
+def test_a_formula_without_a_neutral_molecule_is_refused(formula: str) -> None:
+    with pytest.raises(InvalidFormulaError, match="neutral molecule"):
+        given_molecule(None, formula)
+
+
 @pytest.mark.parametrize("mass", ["heavy", "", "-5", "0", "nan", "inf", "1e9", "2_86"])
 def test_what_is_no_mass_is_refused(mass: str) -> None:
     with pytest.raises(InvalidValueError):
