@@ -8,7 +8,7 @@ from dataclasses import dataclass
 from speclib.annotation.satellites import MOSTLY_SATELLITE, Satellites
 from speclib.annotation.votes import ACCURATE_LIMIT_DA, Candidate, Unknown
 from speclib.chemistry.isotopes import isotope_pattern
-from speclib.chemistry.subformulae import can_be_an_ion, subformulae_of_nominal_mz
+from speclib.chemistry.subformulae import can_be_an_ion, plausible_ions
 from speclib.model.results import Check
 from speclib.search.molecular_mass import IMPLAUSIBLE_LOSSES
 
@@ -76,10 +76,9 @@ def _formula(candidate: Candidate, unknown: Unknown) -> Check:
         return Check(FORMULA, None, "the unknown's formula is not known")
     if not molecule.contains(ion):
         return Check(FORMULA, False, f"{ion} is not part of {molecule}", refuses=True)
-    possible = subformulae_of_nominal_mz(molecule, candidate.mz)
-    if len(possible) == 1:
-        return Check(FORMULA, True, f"{ion} is the only composition of {molecule} at m/z {candidate.mz}")
-    others = ", ".join(str(f) for f in possible if f != ion)
+    others = ", ".join(str(f) for f in plausible_ions(molecule, candidate.mz) if f != ion)
+    if not others:
+        return Check(FORMULA, True, f"{ion} is the only plausible composition of {molecule} at m/z {candidate.mz}")
     return Check(FORMULA, True, f"{ion} is part of {molecule}; at m/z {candidate.mz} so is {others}")
 
 

@@ -10,7 +10,7 @@ from collections.abc import Sequence
 
 from speclib.annotation.checks import LOSS
 from speclib.annotation.votes import Candidate, Unknown
-from speclib.chemistry.subformulae import subformulae_of_nominal_mz
+from speclib.chemistry.subformulae import plausible_ions
 from speclib.model.results import Check
 
 PRIOR_BASIS = "prior"
@@ -40,7 +40,7 @@ def prior_confidence(
     molecule = unknown.formula
     unseen, limit = UNSEEN_VOTE, HIGHEST
     if molecule is not None:
-        only = len(subformulae_of_nominal_mz(molecule, candidate.mz)) == 1
+        only = all(ion == candidate.formula for ion in plausible_ions(molecule, candidate.mz))
         unseen = 0.0 if only else UNSEEN_VOTE_WITHIN_FORMULA
         if not only:
             limit = SINGLE_WITNESS_LIMIT if candidate.compounds == 1 else SEVERAL_WITNESSES_LIMIT

@@ -12,6 +12,7 @@ from speclib.chemistry.elements import ELECTRON_MASS, ELEMENTS
 from speclib.chemistry.formula import Formula
 
 LOWEST_RDBE = -0.5
+MOST_RDBE_GAINED = 1.5
 LONE_PAIRS = ("N", "O", "P", "S", "Se", "F", "Cl", "Br", "I")
 
 
@@ -44,6 +45,16 @@ def subformulae_of_nominal_mz(parent: Formula, nominal_mz: int) -> list[Formula]
     wanted = float(nominal_mz)
     found = _walk(parent, wanted, max(0.5, 2e-3 * wanted))
     return sorted(f for f in found if f.nominal_mass == nominal_mz and f.rdbe >= LOWEST_RDBE)
+
+
+def plausible_ions(molecule: Formula, nominal_mz: int) -> list[Formula]:
+    """Sub-formulas of a molecule at a nominal m/z that can be ions and are not far more unsaturated than it.
+
+    Fragments gain little unsaturation: toluene (RDBE 4) reaches C7H5+ (5.5), hence the limit; common practice, no
+    source.
+    """
+    found = subformulae_of_nominal_mz(molecule, nominal_mz)
+    return [f for f in found if can_be_an_ion(f) and f.rdbe <= molecule.rdbe + MOST_RDBE_GAINED]
 
 
 def _walk(parent: Formula, target: float, tolerance: float) -> Iterator[Formula]:

@@ -17,6 +17,8 @@ from speclib.cli.options import (
 from speclib.cli.output import CAUTION, number, print_json, print_lines, print_table, show_disagreements, talk
 
 SHOWN_DONORS = 5
+LOW_MASS = 100
+"""Below this m/z an unnamed composition is worth a line; above, formulas offer too many."""
 
 
 @click.command()
@@ -145,7 +147,9 @@ def show_proposals(proposals: Any, refused: Any) -> None:
         )
         unnamed = [f"m/z {p.mz:g} {words}" for p in proposals if (words := _unvoted(p, proposals))]
         if unnamed:
-            print_lines([f"Possible within the formula as well, though no donor says so: {'; '.join(unnamed)}."])
+            print_lines(
+                [f"Low m/z that the formula could give otherwise, though no donor says so: {'; '.join(unnamed)}."]
+            )
         basis = sorted({p.confidence_basis for p in proposals})
         print_lines([f"Confidence: {', '.join(basis)} (a prior is a documented guess, not a measured probability)."])
     if refused:
@@ -173,9 +177,9 @@ def _unvoted(proposal: Any, proposals: Any) -> str:
     detail = next((c.detail for c in proposal.checks if c.name == "formula"), "")
     _, _, others = detail.partition("so is ")
     free = [name for name in others.split(", ") if name and name not in there]
-    if proposal.formula != there[0] or not free:
+    if proposal.formula != there[0] or proposal.mz >= LOW_MASS:
         return ""
-    return ", ".join(free[:3]) + (f" and {len(free) - 3} more" if len(free) > 3 else "")
+    return ", ".join(free)
 
 
 def _donors(proposal: Any) -> str:
