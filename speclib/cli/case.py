@@ -54,6 +54,7 @@ def show(ctx: click.Context, case_id: int, as_json: bool) -> None:
             f"made at library state {found.library_state[:12]}",
         ]
     )
+    print_lines(f"FLAGGED since {flag['at'][:10]}: {flag['reason']}" for flag in found.flags)
     if found.neighbours:
         print_table(
             ("rank", "spectrum", "compound", "simil.", "dM"),
@@ -84,6 +85,7 @@ def show(ctx: click.Context, case_id: int, as_json: bool) -> None:
     help="Accept the best undecided proposal of each peak from this confidence upward; recorded as 'by rule'.",
 )
 @click.option("--revise", is_flag=True, help="Decide anew what is decided already; needs --reason.")
+@click.option("--settle-flags", is_flag=True, help="Close the case's flags: you have looked at what they say.")
 @click.option(
     "--seen-rev", type=click.IntRange(min=1), help="Revision of the case you looked at; refuse if it moved on since."
 )
@@ -99,6 +101,7 @@ def review(
     accept_from: float | None,
     revise: bool,
     seen_rev: int | None,
+    settle_flags: bool,
     reason: str | None,
     analyst: str | None,
     as_json: bool,
@@ -106,7 +109,7 @@ def review(
     """Accept or reject proposals of a case."""
     from speclib.workflows.cases import Decisions, review_case
 
-    decisions = Decisions(accept, reject, accept_from, revise, seen_rev)
+    decisions = Decisions(accept, reject, accept_from, revise, seen_rev, settle_flags)
     with open_library(ctx) as library:
         result = review_case(library, case_id, decisions, analyst=analyst, reason=reason)
     if as_json:

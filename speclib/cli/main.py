@@ -22,6 +22,7 @@ COMMANDS: dict[str, str] = {
     "compound": "speclib.cli.compound:compound",
     "intake": "speclib.cli.intake:intake",
     "confirm": "speclib.cli.confirm:confirm",
+    "withdraw": "speclib.cli.withdraw:withdraw",
     "assign": "speclib.cli.assign:assign",
     "search": "speclib.cli.search:search",
     "carry": "speclib.cli.carry:carry",

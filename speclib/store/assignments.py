@@ -58,6 +58,12 @@ def accepted_assignments(connection: sqlite3.Connection, compound_id: int) -> li
     )
 
 
+def spectrum_of_assignment(connection: sqlite3.Connection, assignment_id: int) -> int | None:
+    """Number of the spectrum that an assignment belongs to, or None when there is no such assignment."""
+    row = connection.execute("SELECT spectrum_id FROM assignments WHERE id = ?", (assignment_id,)).fetchone()
+    return int(row["spectrum_id"]) if row else None
+
+
 def donor_assignments(connection: sqlite3.Connection, compound_id: int) -> list[Assignment]:
     """Accepted assignments of a compound that can be carried: those that were not carried themselves.
 

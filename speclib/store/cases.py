@@ -13,6 +13,7 @@ from speclib.model.entry import LibrarySpectrum
 from speclib.model.results import CarryResult, Check, DonorVote, Proposal, rounded
 from speclib.store.assignments import insert_carried
 from speclib.store.canonical import canonical_json
+from speclib.store.flags import open_flags
 from speclib.store.schema import LOCAL_IDS
 from speclib.store.spectra import get_spectrum
 from speclib.store.writing import WriteTransaction
@@ -53,6 +54,7 @@ class Case:
     proposals: tuple[Proposal, ...]
     refused: tuple[Proposal, ...]
     rev: int
+    flags: tuple[dict[str, Any], ...] = ()
 
     def to_json(self) -> dict[str, Any]:
         """The case as plain values."""
@@ -69,6 +71,7 @@ class Case:
             "neighbours": [n.to_json() for n in self.neighbours],
             "proposals": [p.to_json() for p in self.proposals],
             "refused": [p.to_json() for p in self.refused],
+            "flags": list(self.flags),
             "rev": self.rev,
         }
 
@@ -166,6 +169,7 @@ def get_case(connection: sqlite3.Connection, case_id: int) -> Case:
         tuple(p for p in proposals if p.state != refused),
         tuple(p for p in proposals if p.state == refused),
         row["rev"],
+        tuple(open_flags(connection, row["uid"])),
     )
 
 

@@ -10,6 +10,7 @@ from speclib.errors import EntryNotFoundError, InvalidValueError, RefusedError
 from speclib.model.assignment import AssignmentState
 from speclib.model.results import Proposal
 from speclib.store.cases import Case, get_case, list_cases
+from speclib.store.flags import close_flags
 from speclib.store.library import Library
 from speclib.store.trail import library_state
 
@@ -26,6 +27,7 @@ class Decisions:
     accept_from: float | None = None
     revise: bool = False
     seen_rev: int | None = None
+    settle_flags: bool = False
 
 
 @dataclass(frozen=True)
@@ -72,7 +74,8 @@ def review_case(
         if case.status != "open":
             raise RefusedError(f"case {case_id} is {case.status}", "decisions are made on open cases")
         plan = _plan(case, decisions)
-        if plan:
+        settled = close_flags(transaction, case.uid) if decisions.settle_flags else 0
+        if plan or settled:
             transaction.update("cases", case_id, expected_rev=decisions.seen_rev)
         for proposal, state, how in plan:
             transaction.update(
@@ -85,20 +88,22 @@ def review_case(
         accepted = tuple(p.id or 0 for p, state, _ in plan if state is AssignmentState.ACCEPTED)
         rejected = tuple(p.id or 0 for p, state, _ in plan if state is AssignmentState.REJECTED)
         transaction.detail = {"case": case_id, "accepted": list(accepted), "rejected": list(rejected)}
-        if not plan:
+        if settled:
+            transaction.detail["flags_settled"] = settled
+        if not plan and not settled:
             transaction.abandon()
     with library.reading() as connection:
         return ReviewResult(get_case(connection, case_id), accepted, rejected, library_state(connection))
 
 
 def _check_wishes(decisions: Decisions, reason: str | None) -> None:
-    if not (decisions.accept or decisions.reject or decisions.accept_from is not None):
-        raise InvalidValueError("no decision is given", "use --accept, --reject or --accept-from")
+    if not (decisions.accept or decisions.reject or decisions.accept_from is not None or decisions.settle_flags):
+        raise InvalidValueError("no decision is given", "use --accept, --reject, --accept-from or --settle-flags")
     both = set(decisions.accept) & set(decisions.reject)
     if both:
         raise InvalidValueError(f"proposal {min(both)} is both accepted and rejected", "decide for one")
-    if (decisions.reject or decisions.revise) and not (reason or "").strip():
-        raise InvalidValueError("a rejection or a revised decision needs its reason", "add --reason TEXT")
+    if (decisions.reject or decisions.revise or decisions.settle_flags) and not (reason or "").strip():
+        raise InvalidValueError("a rejection, a revised decision or settled flags need a reason", "add --reason TEXT")
 
 
 _Planned = tuple[Proposal, AssignmentState, str | None]

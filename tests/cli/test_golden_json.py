@@ -27,6 +27,7 @@ COMMANDS: dict[str, tuple[tuple[str, ...], ...]] = {
     "assign": ((*L, "assign", "2", "--mz", "58", "--formula", "C3H6O", "--mechanism",
                 "McLafferty rearrangement", *BY),),
     "confirm": ((*L, "confirm", "2", "--standard", "invented standard lot 3", *BY),),
+    "withdraw": ((*CARRY, *BY), (*L, "withdraw", "1", "--reason", "another lot was run", *BY)),
     "search": ((*L, "search", "unknown.txt", "--mass", "128", "--measure", "shifted"),),
     "carry": ((*CARRY, *BY),),
     "case_list": ((*CARRY, *BY), (*L, "case", "list")),

@@ -422,3 +422,36 @@ def test_a_lock_in_the_middle_of_a_batch_leaves_a_full_account(
     assert outcome.status == 1
     assert [s["file"] for s in outcome.document["spectra"]] == ["unknown.txt"]
     assert outcome.document["skipped"][0]["file"] == "stranger.txt"
+
+
+def test_a_withdrawn_donor_donates_no_more_and_flags_the_cases_that_rest_on_it(speclib: Any, library: Path) -> None:
+    assert library.exists()
+    ok(speclib(*CARRY, *BY))
+    assert speclib(*L, "withdraw", "1", *BY).status == 1
+    done = document(speclib(*L, "withdraw", "1", "--reason", "another lot was run", *BY, "--json"))
+    assert done["flagged_cases"] == [1]
+    assert done["withdrawn"][0]["status"] == "withdrawn"
+    flags = document(speclib(*L, "case", "show", "1", "--json"))["flags"]
+    assert flags
+    assert all("another lot was run" in flag["reason"] for flag in flags)
+    assert "FLAGGED" in ok(speclib(*L, "case", "show", "1")).out
+    found = document(speclib(*CARRY, "--no-save", "--json"))
+    assert {d["spectrum_id"] for p in found["proposals"] for d in p["donors"]} == {3}
+    assert speclib(*L, "withdraw", "1", "--reason", "again", *BY).status == 1
+    assert speclib(*L, "review", "1", "--settle-flags", *BY).status == 1
+    ok(speclib(*L, "review", "1", "--settle-flags", "--reason", "the other donor says the same", *BY))
+    assert document(speclib(*L, "case", "show", "1", "--json"))["flags"] == []
+    assert ok(speclib(*L, "verify")).status == 0
+
+
+def test_a_wrong_assignment_can_be_retracted_and_made_again(speclib: Any, library: Path) -> None:
+    assert library.exists()
+    typo = ("assign", "2", "--mz", "43", "--formula", "C2H3O", "--mechanism", "aplha cleavage")
+    made = document(speclib(*L, *typo, *BY, "--json"))["assignments"][0]["id"]
+    done = document(speclib(*L, "withdraw", "--assignment", made, "--reason", "typing error", *BY, "--json"))
+    assert (done["retracted"]["state"], done["flagged_cases"]) == ("rejected", [])
+    ok(speclib(*L, "assign", "2", "--mz", "43", "--formula", "C2H3O", "--mechanism", "alpha-cleavage", *BY))
+    assert speclib(*L, "withdraw", "--assignment", made, "--reason", "twice", *BY).status == 1
+    assert speclib(*L, "withdraw", "--assignment", 999, "--reason", "none", *BY).status == 1
+    assert speclib(*L, "withdraw", "1", "--assignment", made, "--reason", "both", *BY).status == 2
+    assert ok(speclib(*L, "verify")).status == 0
