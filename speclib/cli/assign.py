@@ -7,7 +7,7 @@ from pathlib import Path
 import click
 
 from speclib.cli.options import by_option, json_option, open_library
-from speclib.cli.output import print_json, print_lines, print_table, talk
+from speclib.cli.output import print_assignments, print_json, print_lines, talk
 
 
 @click.command()
@@ -55,21 +55,7 @@ def assign(
         print_json(result.to_json())
         return 1 if result.skipped else 0
     if table is None:
-        print_table(
-            ("spectrum", "m/z", "ion", "loss", "mechanism", "parity"),
-            (
-                (
-                    a.spectrum_id,
-                    f"{a.mz:g}",
-                    f"{a.formula}+",
-                    a.neutral_loss or "-",
-                    a.mechanism,
-                    a.parity.value,
-                )
-                for a in result.assignments
-            ),
-            right=("spectrum", "m/z"),
-        )
+        print_assignments(result.assignments)
     print_lines(
         [
             f"{len(result.assignments)} assignments recorded, {result.already_held} held already, "

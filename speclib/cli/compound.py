@@ -7,7 +7,7 @@ import shlex
 import click
 
 from speclib.cli.options import by_option, json_option, open_library
-from speclib.cli.output import number, print_json, print_lines, print_table, talk
+from speclib.cli.output import number, print_assignments, print_json, print_lines, print_table, talk
 
 
 @click.group()
@@ -134,21 +134,7 @@ def show(ctx: click.Context, compound_name: str, as_json: bool) -> None:
         right=("spectrum", "peaks", "base peak", "RI"),
     )
     if details.assignments:
-        print_table(
-            ("spectrum", "m/z", "ion", "loss", "mechanism", "parity"),
-            (
-                (
-                    a.spectrum_id,
-                    f"{a.mz:g}",
-                    f"{a.formula}+",
-                    a.neutral_loss or "-",
-                    a.mechanism,
-                    a.parity.value,
-                )
-                for a in details.assignments
-            ),
-            right=("spectrum", "m/z"),
-        )
+        print_assignments(details.assignments)
 
 
 def _range(low: float | None, high: float | None) -> str:

@@ -80,6 +80,27 @@ def show_disagreements(neighbours: Iterable[Any], most: int) -> None:
     print_lines([""])
 
 
+def print_assignments(assignments: Iterable[Any]) -> None:
+    """Print accepted assignments, with the numbers that `withdraw --assignment` takes."""
+    print_table(
+        ("id", "spectrum", "m/z", "ion", "loss", "mechanism", "parity", "origin"),
+        (
+            (
+                a.id,
+                a.spectrum_id,
+                f"{a.mz:g}",
+                f"{a.formula}+",
+                "?" if a.neutral_loss is None else (a.neutral_loss or "none"),
+                a.mechanism,
+                a.parity.value,
+                a.origin.value,
+            )
+            for a in assignments
+        ),
+        right=("id", "spectrum", "m/z"),
+    )
+
+
 def number(value: float | None, digits: int = 3) -> str:
     """A number for a table; a dash when there is none."""
     return "-" if value is None else f"{value:.{digits}f}"

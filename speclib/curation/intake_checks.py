@@ -19,11 +19,29 @@ def check_at_intake(
 ) -> list[Finding]:
     """Findings on a spectrum that is about to be stored; `same_peaks` are held spectra with identical peaks."""
     findings = [Finding("reader", Severity.NOTE, note, "reader") for note in found.notes]
+    findings += check_claimed_assignments(found)
     findings += check_scanned_range(found.spectrum)
     findings += check_unit_mass_boundaries(found.spectrum, formula)
     findings += check_claimed_formula(found, formula)
     findings += [_identical(held) for held in same_peaks]
     return findings
+
+
+def check_claimed_assignments(found: SourceSpectrum) -> list[Finding]:
+    """Assignments that the file itself carries are not taken over unseen."""
+    if not found.assignments:
+        return []
+    first = found.assignments[0]
+    reason = f"the file carries {len(found.assignments)} peak assignments of its own (m/z {first.mz:g}: {first.text}"
+    return [
+        Finding(
+            "claimed assignments",
+            Severity.NOTE,
+            f"{reason} ...); they are not taken over: record those that convince you with `speclib assign`",
+            COMMON_PRACTICE,
+            tuple(claim.mz for claim in found.assignments),
+        )
+    ]
 
 
 def _identical(held: LibrarySpectrum) -> Finding:

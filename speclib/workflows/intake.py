@@ -98,7 +98,8 @@ def _intake(
     if not (analyst or "").strip():
         raise SignatureMissingError
     by_file: dict[Path, list[ManifestRow]] = {}
-    for row in rows:
+    # Parents first: a derivative may stand above the compound that it names.
+    for row in sorted(rows, key=lambda r: bool(r.compound and r.compound.derivative_of)):
         by_file.setdefault(row.path, []).append(row)
     taken: list[TakenSpectrum] = []
     progress.start("intake", len(by_file))

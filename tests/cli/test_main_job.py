@@ -455,3 +455,15 @@ def test_a_wrong_assignment_can_be_retracted_and_made_again(speclib: Any, librar
     assert speclib(*L, "withdraw", "--assignment", 999, "--reason", "none", *BY).status == 1
     assert speclib(*L, "withdraw", "1", "--assignment", made, "--reason", "both", *BY).status == 2
     assert ok(speclib(*L, "verify")).status == 0
+
+
+def test_a_derivative_may_stand_above_its_parent_in_a_manifest(speclib: Any, library: Path) -> None:
+    assert library.exists()
+    Path("family.csv").write_text(
+        "file,compound,smiles,derivative_of\nunknown.txt,octanol TMS,CCCCCCCCO[Si](C)(C)C,octanol\n"
+        "stranger.txt,octanol,CCCCCCCCO,\n",
+        encoding="utf-8",
+    )
+    ok(speclib(*L, "intake", "--manifest", "family.csv", *BY))
+    parent, child = (document(speclib(*L, "compound", "show", n, "--json")) for n in ("octanol", "octanol TMS"))
+    assert child["compound"]["derivative_of"] == parent["compound"]["id"]

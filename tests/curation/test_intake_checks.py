@@ -7,7 +7,7 @@ from dataclasses import replace
 from speclib.chemistry.formula import parse_formula
 from speclib.curation.intake_checks import check_at_intake
 from speclib.model.finding import Severity
-from speclib.model.spectrum import MassAccuracy, Measurement, SourceSpectrum, Spectrum
+from speclib.model.spectrum import ClaimedAssignment, MassAccuracy, Measurement, SourceSpectrum, Spectrum
 
 RANGE = Measurement(mz_from=30, mz_to=400)
 PLAIN = SourceSpectrum("a.txt", 1, Spectrum.of([43, 58], [100, 50], measurement=RANGE))
@@ -53,3 +53,10 @@ def test_accurate_mass_is_not_put_on_whole_numbers() -> None:
 def test_remarks_of_the_reader_become_notes() -> None:
     (finding,) = check_at_intake(replace(PLAIN, notes=("read as cp1252",)), None, ())
     assert (finding.severity, finding.reason) == (Severity.NOTE, "read as cp1252")
+
+
+def test_assignments_in_the_file_are_noted_and_not_taken_over() -> None:
+    claimed = replace(PLAIN, assignments=(ClaimedAssignment(43.0, 100.0, "f{C2H3O}"),))
+    (finding,) = check_at_intake(claimed, None, ())
+    assert finding.severity is Severity.NOTE
+    assert "1 peak assignments of its own (m/z 43: f{C2H3O}" in finding.reason

@@ -102,7 +102,12 @@ class Build:
             reason="a donor has it",
         )
         refused = replace(
-            proposal, peak=1, mz=58.0, formula="C3H6O", checks=(Check("parity", False, "odd", refuses=True),), refused_by="parity"
+            proposal,
+            peak=1,
+            mz=58.0,
+            formula="C3H6O",
+            checks=(Check("parity", False, "odd", refuses=True),),
+            refused_by="parity",
         )
         neighbour = Neighbour(
             1, spectrum_id, "uid", Status.CONFIRMED, compound, 0.75, 0.8, 5, 14, None, ("unknown has m/z 97",)
