@@ -134,6 +134,24 @@ def get_compound(connection: sqlite3.Connection, text: str) -> Compound:
     raise EntryNotFoundError(f"the library holds no compound {text!r}", hint)
 
 
+def reference_counts(connection: sqlite3.Connection) -> dict[int, tuple[int, int, int]]:
+    """By compound id: references that are not withdrawn, confirmed ones among them, and their accepted assignments."""
+    query = (
+        "SELECT p.compound_id AS id, count(DISTINCT p.id) AS n, "
+        "count(DISTINCT CASE WHEN p.status = 'confirmed' THEN p.id END) AS confirmed, "
+        "count(DISTINCT CASE WHEN a.state = 'accepted' THEN a.id END) AS assigned "
+        "FROM spectra p LEFT JOIN assignments a ON a.spectrum_id = p.id "
+        "WHERE p.role = 'reference' AND p.status <> 'withdrawn' GROUP BY p.compound_id"
+    )
+    return {row["id"]: (row["n"], row["confirmed"], row["assigned"]) for row in connection.execute(query)}
+
+
+def structure_id_of(connection: sqlite3.Connection, compound_id: int) -> int | None:
+    """Local id of a compound's present structure row, or None."""
+    row = connection.execute("SELECT structure_id FROM compounds WHERE id = ?", (compound_id,)).fetchone()
+    return None if row is None else row["structure_id"]
+
+
 def find_by_inchikey(connection: sqlite3.Connection, inchikey: str) -> Compound | None:
     """The compound of that structure, the oldest if there are several."""
     found = _compounds(connection, "WHERE s.inchikey = ?", (inchikey,))

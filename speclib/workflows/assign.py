@@ -17,6 +17,7 @@ from speclib.model.intake import Skipped
 from speclib.progress import SILENT, Progress
 from speclib.search.rows import reference_row
 from speclib.store.assignments import assignments_of, insert_manual
+from speclib.store.compounds import structure_id_of
 from speclib.store.library import Library
 from speclib.store.spectra import find_spectrum_by_source, get_spectrum
 from speclib.store.trail import library_state
@@ -198,16 +199,10 @@ def _record(transaction: WriteTransaction, entry: LibrarySpectrum, new: NewAssig
                 f"m/z {checked.mz:g} of {entry.label} is assigned as {held.formula} by {held.mechanism!r} already",
                 "one ion has one assignment per peak",
             )
-    row = (
-        transaction.connection.execute("SELECT structure_id FROM compounds WHERE id = ?", (entry.compound.id,))
-        if entry.compound
-        else None
-    )
-    structure = row.fetchone() if row else None
     return insert_manual(
         transaction,
         spectrum_id=entry.id,
-        structure_id=structure["structure_id"] if structure else None,
+        structure_id=structure_id_of(transaction.connection, entry.compound.id) if entry.compound else None,
         peak=checked.peak,
         formula=str(checked.formula),
         neutral_loss=str(checked.neutral_loss),

@@ -20,6 +20,7 @@ from speclib.store.compounds import (
     get_compound,
     insert_compound,
     list_compounds,
+    reference_counts,
 )
 from speclib.store.library import Library
 from speclib.store.spectra import spectra_of_compound
@@ -198,15 +199,8 @@ def add_compound(library: Library, new: NewCompound, *, analyst: str | None) -> 
 
 def summarize_compounds(library: Library, *, class_name: str | None = None) -> list[CompoundSummary]:
     """All compounds (of a class), each with counts of references, confirmed ones and accepted assignments."""
-    query = (
-        "SELECT p.compound_id AS id, count(DISTINCT p.id) AS n, "
-        "count(DISTINCT CASE WHEN p.status = 'confirmed' THEN p.id END) AS confirmed, "
-        "count(DISTINCT CASE WHEN a.state = 'accepted' THEN a.id END) AS assigned "
-        "FROM spectra p LEFT JOIN assignments a ON a.spectrum_id = p.id "
-        "WHERE p.role = 'reference' AND p.status <> 'withdrawn' GROUP BY p.compound_id"
-    )
     with library.reading() as connection:
-        counts = {row["id"]: (row["n"], row["confirmed"], row["assigned"]) for row in connection.execute(query)}
+        counts = reference_counts(connection)
         compounds = list_compounds(connection)
     wanted = class_name.casefold() if class_name else None
     return [
