@@ -202,7 +202,9 @@ def require_closed_shell(formula: Formula) -> None:
     Raises:
         InvalidFormulaError: too many hydrogens or halogens, or an odd electron.
     """
-    if formula.rdbe < 0 or not float(formula.rdbe).is_integer():
+    # RDBE counts lowest valences: SF6 lies at -2, PCl5 at -1.
+    lowest = -(2 * formula["S"] + 2 * formula["Se"] + formula["P"])
+    if formula.rdbe < lowest or not float(formula.rdbe).is_integer():
         raise InvalidFormulaError(
             f"{formula} is not the formula of a neutral molecule (rings plus double bonds would be {formula.rdbe:g})",
             "check the hydrogens",

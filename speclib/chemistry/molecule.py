@@ -6,12 +6,14 @@ RDKit loads on first use, because it costs a noticeable fraction of a second.
 from __future__ import annotations
 
 from dataclasses import dataclass
+from typing import Any
 
 from speclib.chemistry.elements import ELEMENTS
 from speclib.chemistry.formula import Formula
 from speclib.errors import InvalidStructureError
 
 MAX_SMILES_LENGTH = 2000
+COMPLEX_METALS = frozenset({"Fe", "Ge", "Sn", "Hg", "Pb"})
 
 
 @dataclass(frozen=True)
@@ -52,7 +54,7 @@ def molecule_facts(smiles: str) -> MoleculeFacts:
         raise InvalidStructureError(f"{text!r} is not a SMILES that can be read", "check brackets, rings and valences")
     if molecule.GetNumAtoms() == 0 or any(atom.GetAtomicNum() == 0 for atom in molecule.GetAtoms()):
         raise InvalidStructureError(f"{text!r} has no atoms or has wildcard atoms", "draw the whole molecule")
-    if "." in text and len(Chem.GetMolFrags(molecule)) > 1:
+    if "." in text and not _is_drawn_as_ions_of_a_complex(molecule):
         raise InvalidStructureError(f"{text!r} has several components", "a compound is one molecule")
     if Chem.GetFormalCharge(molecule) != 0:
         raise InvalidStructureError(f"{text!r} is charged", "give the neutral molecule")
@@ -60,6 +62,15 @@ def molecule_facts(smiles: str) -> MoleculeFacts:
     if not key:
         raise InvalidStructureError(f"{text!r} has no standard InChI", "check the structure")
     return MoleculeFacts(Chem.MolToSmiles(molecule), key, _formula(Chem.AddHs(molecule), text))
+
+
+def _is_drawn_as_ions_of_a_complex(molecule: Any) -> bool:
+    """Whether the components are one volatile complex drawn as ions, such as ferrocene; salts and solvates are not."""
+    from rdkit import Chem
+
+    fragments = Chem.GetMolFrags(molecule, asMols=True)
+    alone = [fragment.GetAtomWithIdx(0).GetSymbol() for fragment in fragments if fragment.GetNumAtoms() == 1]
+    return len(fragments) == 1 or any(symbol in COMPLEX_METALS for symbol in alone)
 
 
 def _formula(molecule: object, text: str) -> Formula:

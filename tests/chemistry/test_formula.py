@@ -22,6 +22,7 @@ from speclib.chemistry.formula import (
     obeys_nitrogen_rule,
     parse_formula,
     parse_ion_formula,
+    require_closed_shell,
 )
 from speclib.errors import InvalidFormulaError
 
@@ -295,3 +296,14 @@ def test_a_whole_number_of_rings_and_double_bonds_and_the_nitrogen_rule_are_one_
 def test_lowest_rdbe_of_an_ion() -> None:
     assert parse_formula("H4N").rdbe == -0.5
     assert parse_formula("H3O").rdbe == -0.5
+
+
+@pytest.mark.parametrize("text", ["C6H6", "CH3NO2", "SF6", "PCl5", "C10H10Fe", "C6D6", "C8H20Sn"])
+def test_formulas_of_molecules_are_taken(text: str) -> None:
+    require_closed_shell(parse_formula(text))
+
+
+@pytest.mark.parametrize("text", ["CH3", "C9H17O2", "C2H9", "NO"])
+def test_radicals_and_impossible_molecules_are_refused(text: str) -> None:
+    with pytest.raises(InvalidFormulaError, match="neutral molecule"):
+        require_closed_shell(parse_formula(text))

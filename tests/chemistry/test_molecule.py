@@ -127,3 +127,10 @@ def test_nothing_is_printed_about_what_cannot_be_read(capfd: pytest.CaptureFixtu
     with pytest.raises(InvalidStructureError):
         molecule_facts("CC(=O")
     assert capfd.readouterr() == ("", "")
+
+
+def test_a_volatile_complex_drawn_as_ions_is_one_molecule() -> None:
+    # ferrocene, C10H10Fe (its 56Fe reference is among the golden isotope patterns)
+    assert str(molecule_facts("[CH-]1C=CC=C1.[CH-]1C=CC=C1.[Fe+2]").formula) == "C10H10Fe"
+    with pytest.raises(InvalidStructureError, match="several components"):
+        molecule_facts("CC(=O)[O-].[Na+]")
