@@ -6,16 +6,22 @@ from collections.abc import Sequence
 
 from speclib.chemistry.formula import Formula, parse_formula
 from speclib.cleaning.nominal import bin_to_nominal_mass
+from speclib.curation.spectrum_checks import (
+    COMMON_PRACTICE,
+    check_background,
+    check_claimed_cas,
+    check_few_peaks,
+    check_peaks_above_molecule,
+    check_saturation,
+)
 from speclib.errors import InvalidFormulaError
 from speclib.model.entry import LibrarySpectrum
 from speclib.model.finding import Finding, Severity
 from speclib.model.spectrum import MassAccuracy, SourceSpectrum, Spectrum
 
-COMMON_PRACTICE = "common practice, no source"
-
 
 def check_at_intake(
-    found: SourceSpectrum, formula: Formula | None, same_peaks: Sequence[LibrarySpectrum]
+    found: SourceSpectrum, formula: Formula | None, same_peaks: Sequence[LibrarySpectrum], cas: str | None = None
 ) -> list[Finding]:
     """Findings on a spectrum that is about to be stored; `same_peaks` are held spectra with identical peaks."""
     findings = [Finding("reader", Severity.NOTE, note, "reader") for note in found.notes]
@@ -23,6 +29,12 @@ def check_at_intake(
     findings += check_scanned_range(found.spectrum)
     findings += check_unit_mass_boundaries(found.spectrum, formula)
     findings += check_claimed_formula(found, formula)
+    findings += check_claimed_cas(found.cas, cas)
+    peaks = bin_to_nominal_mass(found.spectrum, formula)
+    findings += check_few_peaks(peaks)
+    findings += check_peaks_above_molecule(peaks, formula)
+    findings += check_saturation(peaks, formula)
+    findings += check_background(peaks, formula)
     findings += [_identical(held) for held in same_peaks]
     return findings
 

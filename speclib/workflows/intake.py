@@ -217,7 +217,7 @@ def _store(
         return _taken(found, held.id, compound, _status_text(held), (), already_held=True, remark=remark)
     formula = parse_formula(compound.formula) if compound and compound.formula else None
     others = [e for e in same if not _is_of(e, compound)] if options.replicate else same
-    findings = check_at_intake(found, formula, others)
+    findings = check_at_intake(found, formula, others, compound.cas if compound else None)
     if order.row.status is Status.CONFIRMED:
         require_gate(compound, order.row.standard, [f.reason for f in findings if f.severity is Severity.FAULT])
     spectrum_id = insert_spectrum(

@@ -9,8 +9,8 @@ from speclib.curation.intake_checks import check_at_intake
 from speclib.model.finding import Severity
 from speclib.model.spectrum import ClaimedAssignment, MassAccuracy, Measurement, SourceSpectrum, Spectrum
 
-RANGE = Measurement(mz_from=30, mz_to=400)
-PLAIN = SourceSpectrum("a.txt", 1, Spectrum.of([43, 58], [100, 50], measurement=RANGE))
+RANGE = Measurement(mz_from=20, mz_to=400)
+PLAIN = SourceSpectrum("a.txt", 1, Spectrum.of([26, 27, 39, 42, 43, 58], [5, 8, 5, 7, 100, 50], measurement=RANGE))
 
 
 def test_a_plain_spectrum_has_no_findings() -> None:
@@ -18,7 +18,7 @@ def test_a_plain_spectrum_has_no_findings() -> None:
 
 
 def test_a_missing_scanned_range_is_a_doubt() -> None:
-    bare = replace(PLAIN, spectrum=Spectrum.of([43, 58], [100, 50], measurement=Measurement(mz_from=30)))
+    bare = replace(PLAIN, spectrum=replace(PLAIN.spectrum, measurement=Measurement(mz_from=20)))
     (finding,) = check_at_intake(bare, None, ())
     assert finding.severity is Severity.DOUBT
     assert finding.reason.startswith("mz_to not given")
@@ -46,7 +46,7 @@ def test_peaks_near_the_boundary_of_two_whole_numbers_are_a_doubt_unless_the_for
 
 
 def test_accurate_mass_is_not_put_on_whole_numbers() -> None:
-    accurate = Spectrum.of([43.4, 58.5], [100, 50], MassAccuracy.ACCURATE, RANGE)
+    accurate = Spectrum.of([26.4, 27.5, 39.4, 42.5, 43.4, 58.5], [5, 8, 5, 7, 100, 50], MassAccuracy.ACCURATE, RANGE)
     assert check_at_intake(replace(PLAIN, spectrum=accurate), None, ()) == []
 
 
