@@ -5,6 +5,7 @@ RDKit loads on first use, because it costs a noticeable fraction of a second.
 
 from __future__ import annotations
 
+from collections.abc import Iterable
 from dataclasses import dataclass
 from typing import Any
 
@@ -85,3 +86,33 @@ def _formula(molecule: object, text: str) -> Formula:
             raise InvalidStructureError(f"{text!r} holds {symbol}, which speclib does not know")
         counts[symbol] = counts.get(symbol, 0) + 1
     return Formula.of(counts)
+
+
+@dataclass(frozen=True)
+class StructureRecord:
+    """One record of a structure file: its number from 1, name, SMILES ("" when it cannot be read) and data fields."""
+
+    number: int
+    name: str
+    smiles: str
+    fields: dict[str, str]
+
+
+def records_of_sdf(text: str) -> list[StructureRecord]:
+    """Molecules of an SD file (connection tables with data fields, records end in `$$$$`), unreadable ones included."""
+    import io
+
+    from rdkit import Chem, RDLogger
+
+    RDLogger.DisableLog("rdApp.*")  # type: ignore[attr-defined]
+    # RDKit's stubs do not say that an unreadable record comes as None.
+    supplier: Iterable[Any] = Chem.ForwardSDMolSupplier(io.BytesIO(text.encode()), removeHs=True)
+    records = []
+    for number, molecule in enumerate(supplier, start=1):
+        if molecule is None:
+            records.append(StructureRecord(number, "", "", {}))
+            continue
+        fields = {name.casefold(): str(molecule.GetProp(name)) for name in molecule.GetPropNames()}
+        name = molecule.GetProp("_Name") if molecule.HasProp("_Name") else ""
+        records.append(StructureRecord(number, name.strip(), Chem.MolToSmiles(molecule), fields))
+    return records

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import shlex
+from pathlib import Path
 
 import click
 
@@ -16,7 +17,10 @@ def compound() -> None:
 
 
 @compound.command()
-@click.argument("name")
+@click.argument("name", required=False)
+@click.option(
+    "--from", "table", type=click.Path(path_type=Path), help="Add many: an SD file, or a CSV with the column smiles."
+)
 @click.option("--smiles", help="Structure; the identity of the compound.")
 @click.option("--formula", help="Formula, when there is no structure.")
 @click.option("--cas", help="CAS Registry Number.")
@@ -29,7 +33,8 @@ def compound() -> None:
 @click.pass_context
 def add(
     ctx: click.Context,
-    name: str,
+    name: str | None,
+    table: Path | None,
     smiles: str | None,
     formula: str | None,
     cas: str | None,
@@ -39,21 +44,51 @@ def add(
     derivative: str | None,
     analyst: str | None,
     as_json: bool,
-) -> None:
-    """Add a compound called NAME."""
+) -> int:
+    """Add a compound called NAME, or all compounds of a file with --from.
+
+    Columns of the CSV: compound, smiles, formula, cas, synonyms, classes, derivative_of, derivative; only smiles is
+    required.
+    """
     from speclib.workflows.compounds import NewCompound, add_compound
 
-    new = NewCompound(name, smiles, formula, cas, synonyms, classes, derivative_of, derivative)
+    if (name is None) == (table is None):
+        raise click.UsageError("Give either NAME or --from FILE.", ctx)
+    if table is not None:
+        return _add_from(ctx, table, analyst, as_json)
+
+    new = NewCompound(name or "", smiles, formula, cas, synonyms, classes, derivative_of, derivative)
     with open_library(ctx) as library:
         made = add_compound(library, new, analyst=analyst)
         state = library.state()
     if as_json:
         print_json({"schema": 1, "library_state": state, "compound": made.to_json()})
-        return
+        return 0
     mass = f", nominal mass {made.structure.nominal_mass}" if made.structure else ""
     print_lines([f"Compound {made.id}: {made.name}, {made.formula}{mass}"])
     quoted = shlex.quote(made.name)
     talk(f"Next: take in its spectra with a manifest, or: speclib intake FILE --compound {quoted} --by NAME")
+    return 0
+
+
+def _add_from(ctx: click.Context, table: Path, analyst: str | None, as_json: bool) -> int:
+    from speclib.cli.progress import progress
+    from speclib.workflows.structures import add_compounds_from
+
+    with open_library(ctx) as library:
+        result = add_compounds_from(library, table, analyst=analyst, progress=progress())
+    if as_json:
+        print_json(result.to_json())
+        return 1 if result.skipped else 0
+    print_table(
+        ("id", "compound", "formula", "M"),
+        ((c.id, c.name, c.formula, c.structure.nominal_mass if c.structure else "-") for c in result.compounds),
+        right=("id", "M"),
+    )
+    print_lines([f"{len(result.compounds)} compounds added, {len(result.skipped)} skipped."])
+    for skipped in result.skipped:
+        talk(f"skipped {skipped.reason}")
+    return 1 if result.skipped else 0
 
 
 @compound.command(name="list")

@@ -37,7 +37,7 @@ def read_table(path: Path, columns: Sequence[str], required: Sequence[str]) -> l
     Raises:
         InputFileError: missing, unreadable, empty, unknown or missing columns, rows of the wrong length.
     """
-    text = _read_text(path)
+    text = read_text(path)
     header_line = next((line for line in text.splitlines() if line.strip()), "")
     delimiter = max(",;\t", key=header_line.count)
     reader = csv.reader(io.StringIO(text, newline=""), delimiter=delimiter, strict=True)
@@ -79,7 +79,12 @@ def _row(path: Path, header: list[str], cells: list[str], line: int) -> TableRow
     return TableRow(line, {name: cell.strip() for name, cell in zip(header, cells, strict=False) if name})
 
 
-def _read_text(path: Path) -> str:
+def read_text(path: Path) -> str:
+    """The text of a table or structure file: UTF-8 with or without BOM, or UTF-16.
+
+    Raises:
+        InputFileError: missing, a folder, unreadable, too large, empty, or no text.
+    """
     if path.is_dir():
         raise InputFileError(shown_name(str(path)), "is a folder, not a table", advice="name the CSV file")
     try:
