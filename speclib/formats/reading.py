@@ -15,7 +15,6 @@ from pathlib import Path
 from speclib.errors import InputFileError
 from speclib.formats.delimited_text import read_delimited_text
 from speclib.formats.foreign_content import refuse_foreign_bytes, refuse_foreign_text
-from speclib.formats.jcamp_dx import is_jcamp, read_jcamp
 from speclib.formats.options import DecimalMark, ReadOptions, Separator
 from speclib.formats.text_document import TextDocument, decode_document, shown_name
 from speclib.model.spectrum import SourceFile, SourceSpectrum
@@ -34,8 +33,23 @@ class TextReader:
     read: Callable[[TextDocument, ReadOptions], tuple[SourceSpectrum, ...]]
 
 
+def _is_jcamp(document: TextDocument) -> bool:
+    # The JCAMP-DX modules load only for files that can be it: they cost as much as all other readers together.
+    if not any("##" in line for line in document.lines):
+        return False
+    from speclib.formats.jcamp_dx import is_jcamp
+
+    return is_jcamp(document)
+
+
+def _read_jcamp(document: TextDocument, options: ReadOptions) -> tuple[SourceSpectrum, ...]:
+    from speclib.formats.jcamp_dx import read_jcamp
+
+    return read_jcamp(document, options)
+
+
 _TEXT_READERS = (
-    TextReader("JCAMP-DX", is_jcamp, read_jcamp),
+    TextReader("JCAMP-DX", _is_jcamp, _read_jcamp),
     # The last one takes whatever no other reader knows, and says what it misses.
     TextReader("delimited text", lambda _: True, read_delimited_text),
 )
