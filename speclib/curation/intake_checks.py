@@ -39,6 +39,19 @@ def check_at_intake(
     return findings
 
 
+def check_same_conditions(spectrum: Spectrum, siblings: Sequence[LibrarySpectrum]) -> list[Finding]:
+    """References of one compound with different carrier gases or electron energies do not replicate each other."""
+    findings = []
+    for name, words in (("carrier_gas", "carrier gas"), ("electron_energy_ev", "electron energy")):
+        ours = getattr(spectrum.measurement, name)
+        others = {getattr(s.spectrum.measurement, name) for s in siblings} - {None, ours}
+        if ours is not None and others:
+            listed = ", ".join(sorted(str(other) for other in others))
+            reason = f"{words} is {ours} here, but {listed} in other references of the compound"
+            findings.append(Finding("mixed conditions", Severity.DOUBT, reason, COMMON_PRACTICE))
+    return findings
+
+
 def check_claimed_assignments(found: SourceSpectrum) -> list[Finding]:
     """Assignments that the file itself carries are not taken over unseen."""
     if not found.assignments:

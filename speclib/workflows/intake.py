@@ -8,7 +8,7 @@ from pathlib import Path
 
 from speclib.chemistry.formula import parse_formula
 from speclib.clock import utc_text
-from speclib.curation.intake_checks import check_at_intake
+from speclib.curation.intake_checks import check_at_intake, check_same_conditions
 from speclib.errors import InputFileError, LibraryError, RefusedError, SignatureMissingError, SpeclibError
 from speclib.formats.reading import ReadOptions, read_spectra
 from speclib.model.compound import Compound
@@ -25,6 +25,7 @@ from speclib.store.spectra import (
     insert_source,
     insert_spectrum,
     sign,
+    spectra_of_compound,
     spectra_with_content,
 )
 from speclib.store.writing import WriteTransaction
@@ -218,6 +219,9 @@ def _store(
     formula = parse_formula(compound.formula) if compound and compound.formula else None
     others = [e for e in same if not _is_of(e, compound)] if options.replicate else same
     findings = check_at_intake(found, formula, others, compound.cas if compound else None)
+    if compound:
+        siblings = [e for e in spectra_of_compound(connection, compound.id) if e.status is not Status.WITHDRAWN]
+        findings += check_same_conditions(found.spectrum, siblings)
     if order.row.status is Status.CONFIRMED:
         require_gate(compound, order.row.standard, [f.reason for f in findings if f.severity is Severity.FAULT])
     spectrum_id = insert_spectrum(

@@ -467,3 +467,22 @@ def test_a_derivative_may_stand_above_its_parent_in_a_manifest(speclib: Any, lib
     ok(speclib(*L, "intake", "--manifest", "family.csv", *BY))
     parent, child = (document(speclib(*L, "compound", "show", n, "--json")) for n in ("octanol", "octanol TMS"))
     assert child["compound"]["derivative_of"] == parent["compound"]["id"]
+
+
+def test_references_of_one_compound_with_different_carrier_gases_are_a_doubt(speclib: Any, library: Path) -> None:
+    assert library.exists()
+    for gas, height in (("helium", 90), ("helium", 91), ("hydrogen", 92)):
+        lines = [
+            "# mz_from: 25",
+            "# mz_to: 300",
+            f"# carrier_gas: {gas}",
+            "27\t30",
+            "41\t40",
+            "43\t100",
+            "58\t60",
+            f"71\t{height}",
+        ]
+        Path(f"{gas}_{height}.txt").write_text("\n".join(lines) + "\n", encoding="utf-8")
+        taken = document(speclib(*L, "intake", f"{gas}_{height}.txt", "--compound", "2-hexanone", *BY, "--json"))
+        reasons = [f["reason"] for f in taken["spectra"][0]["findings"] if f["check"] == "mixed conditions"]
+        assert bool(reasons) is (gas == "hydrogen"), reasons
