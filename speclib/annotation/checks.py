@@ -7,6 +7,7 @@ from dataclasses import dataclass
 
 from speclib.annotation.satellites import MOSTLY_SATELLITE, Satellites
 from speclib.annotation.votes import ACCURATE_LIMIT_DA, Candidate, Unknown
+from speclib.chemistry.formula import Formula
 from speclib.chemistry.isotopes import isotope_pattern
 from speclib.chemistry.subformulae import can_be_an_ion, plausible_ions
 from speclib.model.results import Check
@@ -38,6 +39,17 @@ def first_refusal(checks: Sequence[Check]) -> str | None:
 def fits_molecule(candidate: Candidate, unknown: Unknown) -> bool:
     """Whether the composition can be an ion of the unknown as far as its molecule is known."""
     return _formula(candidate, unknown).passed is not False
+
+
+def other_compositions(candidate: Candidate, unknown: Unknown) -> list[Formula]:
+    """Plausible ions of the molecule that could be the peak instead; for accurate mass, within the limit."""
+    if unknown.formula is None:
+        return []
+    others = [f for f in plausible_ions(unknown.formula, candidate.mz) if f != candidate.formula]
+    if unknown.comparable.is_accurate:
+        measured = float(unknown.comparable.spectrum.mz[candidate.peak])
+        others = [f for f in others if abs(f.ion_mz() - measured) <= ACCURATE_LIMIT_DA]
+    return others
 
 
 def check_candidate(candidate: Candidate, context: CheckContext) -> tuple[Check, ...]:
@@ -76,7 +88,9 @@ def _formula(candidate: Candidate, unknown: Unknown) -> Check:
         return Check(FORMULA, None, "the unknown's formula is not known")
     if not molecule.contains(ion):
         return Check(FORMULA, False, f"{ion} is not part of {molecule}", refuses=True)
-    others = ", ".join(str(f) for f in plausible_ions(molecule, candidate.mz) if f != ion)
+    if ion != molecule and ion not in plausible_ions(molecule, candidate.mz):
+        return Check(FORMULA, False, f"{ion} is far more unsaturated than {molecule}", refuses=True)
+    others = ", ".join(str(f) for f in other_compositions(candidate, unknown))
     if not others:
         return Check(FORMULA, True, f"{ion} is the only plausible composition of {molecule} at m/z {candidate.mz}")
     return Check(FORMULA, True, f"{ion} is part of {molecule}; at m/z {candidate.mz} so is {others}")
@@ -100,6 +114,8 @@ def _neutral_loss(candidate: Candidate, unknown: Unknown) -> Check:
         name = f"{mass} mass units"
     else:
         return Check(LOSS, None, "the unknown's molecular mass is not known")
+    if mass < 0:
+        return Check(LOSS, False, f"m/z {candidate.mz} lies above the molecular mass {unknown.nominal_mass}")
     if mass in IMPLAUSIBLE_LOSSES:
         return Check(LOSS, False, f"a loss of {name} ({mass}) from the molecular ion is implausible")
     return Check(LOSS, True, f"the molecular ion loses {name} ({mass})")

@@ -8,9 +8,8 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 
-from speclib.annotation.checks import LOSS
+from speclib.annotation.checks import LOSS, other_compositions
 from speclib.annotation.votes import Candidate, Unknown
-from speclib.chemistry.subformulae import plausible_ions
 from speclib.model.results import Check
 
 PRIOR_BASIS = "prior"
@@ -19,7 +18,7 @@ UNSEEN_VOTE = 0.06
 UNSEEN_VOTE_WITHIN_FORMULA = 0.03
 """The same when the formula is known and allows other compositions; it is 0 when it allows one only."""
 SINGLE_WITNESS_LIMIT, SEVERAL_WITNESSES_LIMIT = 0.75, 0.95
-"""One donor compound, or several, do not make a composition surer than this while the formula allows others."""
+"""One donor compound, or several, do not make a composition surer than this while others are possible."""
 DISTANT_LIMIT = 0.6
 """A donor without any similarity would not make a composition surer than this; the limit rises to HIGHEST with it."""
 IMPLAUSIBLE_LOSS_FACTOR = 0.5
@@ -37,13 +36,14 @@ def prior_confidence(
     on principal-peak tables with each compound left out in turn, the prior is close to the share found right without a
     formula and stays below it with one.
     """
-    molecule = unknown.formula
-    unseen, limit = UNSEEN_VOTE, HIGHEST
-    if molecule is not None:
-        only = all(ion == candidate.formula for ion in plausible_ions(molecule, candidate.mz))
+    if unknown.formula is None:
+        unseen, only = UNSEEN_VOTE, False
+    else:
+        only = not other_compositions(candidate, unknown)
         unseen = 0.0 if only else UNSEEN_VOTE_WITHIN_FORMULA
-        if not only:
-            limit = SINGLE_WITNESS_LIMIT if candidate.compounds == 1 else SEVERAL_WITNESSES_LIMIT
+    limit = HIGHEST
+    if not only:
+        limit = SINGLE_WITNESS_LIMIT if candidate.compounds == 1 else SEVERAL_WITNESSES_LIMIT
     value = candidate.weight / (candidate.weight + unseen + sum(rival.weight for rival in rivals))
     if any(check.name == LOSS and check.passed is False for check in checks):
         value *= IMPLAUSIBLE_LOSS_FACTOR

@@ -113,11 +113,12 @@ def peak_of_ion(comparable: Comparable, ion: Formula) -> int | None:
     refuse.
     """
     if comparable.is_accurate:
-        distance = np.abs(comparable.spectrum.mz - ion.ion_mz())
+        away = np.abs(comparable.spectrum.mz - ion.ion_mz())
+        distance = np.where(comparable.spectrum.intensity > 0, away, float("inf"))
         nearest = int(np.argmin(distance))
         if distance[nearest] <= ACCURATE_LIMIT_DA:
             return nearest
-    bins = np.flatnonzero(comparable.nominal.mz == ion.nominal_mass)
+    bins = np.flatnonzero((comparable.nominal.mz == ion.nominal_mass) & (comparable.nominal.intensity > 0))
     return int(comparable.nominal.position[bins[0]]) if len(bins) else None
 
 

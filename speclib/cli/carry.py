@@ -13,6 +13,7 @@ from speclib.cli.options import (
     query_options,
     read_options,
     reading_options,
+    selection_option,
 )
 from speclib.cli.output import CAUTION, number, print_json, print_lines, print_table, show_disagreements, talk
 
@@ -66,6 +67,7 @@ def carry(ctx: click.Context, /, target: str, as_json: bool, **values: Any) -> N
         values["min_peaks"],
         values["most_donors"],
         read_options(values),
+        selection_option(values),
     )
     with open_library(ctx) as library:
         result = carry_to_unknown(

@@ -7,7 +7,7 @@ from typing import Any
 
 import click
 
-from speclib.cli.options import by_option, json_option, open_library, read_options, reading_options
+from speclib.cli.options import by_option, json_option, open_library, read_options, reading_options, selection_option
 from speclib.cli.output import print_json, print_lines, print_table, talk
 
 
@@ -36,9 +36,11 @@ def intake(ctx: click.Context, /, files: tuple[Path, ...], as_json: bool, **valu
     manifest, name, smiles = values["manifest"], values["compound_name"], values["smiles"]
     if bool(files) == (manifest is not None):
         raise click.UsageError("Give either FILES or --manifest.", ctx)
+    if manifest is not None and values["at"] is not None:
+        raise click.UsageError("--at goes with FILES, not with a manifest.", ctx)
     if manifest is not None and (name or smiles):
         raise click.UsageError("--compound and --smiles go with FILES; a manifest names its compounds itself.", ctx)
-    options = IntakeOptions(read_options(values), values["replicate"])
+    options = IntakeOptions(read_options(values), values["replicate"], selection_option(values))
     with open_library(ctx) as library:
         if manifest is not None:
             result = intake_manifest(library, manifest, analyst=values["analyst"], options=options, progress=progress())

@@ -26,6 +26,7 @@ COMMANDS: dict[str, str] = {
     "assign": "speclib.cli.assign:assign",
     "search": "speclib.cli.search:search",
     "carry": "speclib.cli.carry:carry",
+    "run": "speclib.cli.run:run",
     "case": "speclib.cli.case:case",
     "review": "speclib.cli.case:review",
     "history": "speclib.cli.library:history",

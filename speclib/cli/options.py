@@ -11,6 +11,7 @@ import click
 if TYPE_CHECKING:
     from speclib.formats.reading import ReadOptions
     from speclib.store.library import Library
+    from speclib.workflows.sources import RunSelection
 
 F = TypeVar("F", bound=Callable[..., Any])
 
@@ -42,6 +43,9 @@ def reading_options(command: F) -> F:
                 help="Column separator of a text file.",
             ),
             click.option("--encoding", help="Encoding of a text file, e.g. cp1252."),
+            click.option("--at", type=float, metavar="MINUTES", help="Take the spectrum at this time of a run."),
+            click.option("--width", type=float, metavar="MINUTES", help="Average the scans of this width around it."),
+            click.option("--background", metavar="T1..T2", help="Take off the mean of this window (minutes)."),
             click.option("--mz-from", type=float, help="Lower end of the scanned range."),
             click.option("--mz-to", type=float, help="Upper end of the scanned range."),
         )
@@ -84,6 +88,13 @@ def read_options(values: dict[str, Any]) -> ReadOptions:
         mz_from=values.pop("mz_from"),
         mz_to=values.pop("mz_to"),
     )
+
+
+def selection_option(values: dict[str, Any]) -> RunSelection | None:
+    """Take the options that choose a spectrum of a run out of a command's values."""
+    from speclib.workflows.sources import run_selection
+
+    return run_selection(values.pop("at"), values.pop("width"), values.pop("background"))
 
 
 def open_library(ctx: click.Context) -> Library:

@@ -6,7 +6,14 @@ from typing import Any
 
 import click
 
-from speclib.cli.options import json_option, open_library, query_options, read_options, reading_options
+from speclib.cli.options import (
+    json_option,
+    open_library,
+    query_options,
+    read_options,
+    reading_options,
+    selection_option,
+)
 from speclib.cli.output import CAUTION, number, print_json, print_lines, print_table, show_disagreements, talk
 
 
@@ -73,6 +80,7 @@ def search(ctx: click.Context, /, target: str, as_json: bool, **values: Any) -> 
         values["confirmed_only"],
         settings,
         read_options(values),
+        selection_option(values),
     )
     with open_library(ctx) as library:
         result = search_library(library, request, progress=progress())

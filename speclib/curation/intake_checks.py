@@ -43,13 +43,21 @@ def check_same_conditions(spectrum: Spectrum, siblings: Sequence[LibrarySpectrum
     """References of one compound with different carrier gases or electron energies do not replicate each other."""
     findings = []
     for name, words in (("carrier_gas", "carrier gas"), ("electron_energy_ev", "electron energy")):
-        ours = getattr(spectrum.measurement, name)
-        others = {getattr(s.spectrum.measurement, name) for s in siblings} - {None, ours}
+        ours = _plain(getattr(spectrum.measurement, name))
+        others = {_plain(getattr(s.spectrum.measurement, name)) for s in siblings} - {None, ours}
         if ours is not None and others:
             listed = ", ".join(sorted(str(other) for other in others))
             reason = f"{words} is {ours} here, but {listed} in other references of the compound"
             findings.append(Finding("mixed conditions", Severity.DOUBT, reason, COMMON_PRACTICE))
     return findings
+
+
+def _plain(value: object) -> object:
+    """A value without regard to case and to the symbols of the common carrier gases."""
+    if not isinstance(value, str):
+        return value
+    folded = value.strip().casefold()
+    return {"he": "helium", "h2": "hydrogen", "n2": "nitrogen"}.get(folded, folded)
 
 
 def check_claimed_assignments(found: SourceSpectrum) -> list[Finding]:

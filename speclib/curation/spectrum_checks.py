@@ -2,8 +2,9 @@
 
 from __future__ import annotations
 
-from speclib.chemistry.formula import Formula, parse_formula
+from speclib.chemistry.formula import Formula
 from speclib.chemistry.isotopes import isotope_pattern
+from speclib.chemistry.subformulae import plausible_ions
 from speclib.cleaning.nominal import NominalPeaks
 from speclib.model.finding import Finding, Severity
 
@@ -82,7 +83,7 @@ def check_background(peaks: NominalPeaks, formula: Formula | None) -> list[Findi
     top = float(peaks.intensity.max())
     found = []
     for mz, (ion, origin) in BACKGROUND.items():
-        if peaks.height(mz) >= VISIBLE * top / 100.0 and not formula.contains(parse_formula(ion)):
+        if peaks.height(mz) >= VISIBLE * top / 100.0 and not plausible_ions(formula, mz):
             found.append((mz, f"m/z {mz} ({ion}, {origin})"))
     if not found:
         return []

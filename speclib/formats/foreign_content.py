@@ -6,12 +6,13 @@ from speclib.errors import InputFileError
 from speclib.formats.text_document import TextDocument
 
 _EXPORT = "export the spectrum as JCAMP-DX or as text with two columns"
+_TAKE = "an ANDI-MS run gives one spectrum at a time, by its retention time (--at)"
 _SHEET = "save the sheet with the peaks as CSV or tab-separated text"
 _UNPACK = "unpack it first"
 
 _SIGNATURES: tuple[tuple[bytes, str, str], ...] = (
-    (b"CDF\x01", "a netCDF file (the container of ANDI-MS runs)", _EXPORT),
-    (b"CDF\x02", "a netCDF file (the container of ANDI-MS runs)", _EXPORT),
+    (b"CDF\x01", "a netCDF file (the container of ANDI-MS runs)", f"{_TAKE}; or {_EXPORT}"),
+    (b"CDF\x02", "a netCDF file (the container of ANDI-MS runs)", f"{_TAKE}; or {_EXPORT}"),
     (b"CDF\x05", "a netCDF file (the container of ANDI-MS runs)", _EXPORT),
     (b"\x89HDF\r\n\x1a\n", "an HDF5 or netCDF-4 file", _EXPORT),
     (b"PK\x03\x04", "a zip archive or a spreadsheet workbook", f"{_UNPACK}, or {_SHEET}"),

@@ -22,6 +22,7 @@ from speclib.model.spectrum import SourceFile, SourceSpectrum
 __all__ = ["MAX_FILE_BYTES", "DecimalMark", "ReadOptions", "Separator", "read_spectra", "read_spectra_from_bytes"]
 
 MAX_FILE_BYTES = 64 * 1024 * 1024
+_SINGLE_SPECTRA = "give files of single spectra, not whole runs"
 
 
 @dataclass(frozen=True)
@@ -62,7 +63,7 @@ def read_spectra(path: Path, options: ReadOptions = ReadOptions()) -> SourceFile
         InputFileError: the file cannot be opened, is not a format that is read here, is malformed, or leaves something
             open that `options` must answer.
     """
-    return read_spectra_from_bytes(path.name or str(path), _read_bytes(path), options)
+    return read_spectra_from_bytes(path.name or str(path), read_file_bytes(path), options)
 
 
 def read_spectra_from_bytes(
@@ -73,7 +74,7 @@ def read_spectra_from_bytes(
     """Read every spectrum of a file whose bytes are at hand, as from an upload; errors as `read_spectra`."""
     name = shown_name(file_name)
     if len(data) > MAX_FILE_BYTES:
-        raise _too_large(name)
+        raise _too_large(name, MAX_FILE_BYTES, _SINGLE_SPECTRA)
     if not data.strip(b" \t\r\n\0\x1a\xef\xbb\xbf\xff\xfe"):
         raise InputFileError(name, "the file is empty", advice="export the spectrum again")
     refuse_foreign_bytes(name, data)
@@ -84,8 +85,14 @@ def read_spectra_from_bytes(
     return SourceFile(file_name, hashlib.sha256(data).hexdigest(), reader.name, spectra)
 
 
-def _read_bytes(path: Path) -> bytes:
+def read_file_bytes(path: Path, most: int | None = None, advice: str = _SINGLE_SPECTRA) -> bytes:
+    """The bytes of a regular file of at most `most` (`MAX_FILE_BYTES`) bytes; `advice` is for a larger one.
+
+    Raises:
+        InputFileError: missing, a folder or a device, not readable, too large.
+    """
     name = shown_name(path.name or str(path))
+    most = MAX_FILE_BYTES if most is None else most
     try:
         mode = path.stat().st_mode
         if stat.S_ISDIR(mode):
@@ -94,7 +101,7 @@ def _read_bytes(path: Path) -> bytes:
             # Opening a pipe or a device could wait for ever.
             raise InputFileError(name, "this is not a regular file", advice="copy the data to a file first")
         with path.open("rb") as stream:
-            data = stream.read(MAX_FILE_BYTES + 1)
+            data = stream.read(most + 1)
     except FileNotFoundError as error:
         raise InputFileError(
             shown_name(str(path)), "the file does not exist", advice="check name and folder"
@@ -106,14 +113,10 @@ def _read_bytes(path: Path) -> bytes:
     except (OSError, ValueError) as error:
         reason = error.strerror if isinstance(error, OSError) and error.strerror else str(error)
         raise InputFileError(name, f"the file cannot be opened ({reason})", advice="check name and folder") from error
-    if len(data) > MAX_FILE_BYTES:
-        raise _too_large(name)
+    if len(data) > most:
+        raise _too_large(name, most, advice)
     return data
 
 
-def _too_large(name: str) -> InputFileError:
-    return InputFileError(
-        name,
-        f"the file is larger than {MAX_FILE_BYTES // 2**20} MiB",
-        advice="give files of single spectra, not whole runs",
-    )
+def _too_large(name: str, most: int, advice: str) -> InputFileError:
+    return InputFileError(name, f"the file is larger than {most // 2**20} MiB", advice=advice)

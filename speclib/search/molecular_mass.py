@@ -25,6 +25,8 @@ DALTON_PER_CARBON, DALTON_PER_SILICON = 12.0, 65.0
 """Mass that comes with a carbon at the least, and with a silicon in siloxanes and silyl ethers (73 or 74 a unit)."""
 SLACK = 1.3
 MOST_HALOGENS = 8
+VISIBLE_MEMBER = 1.0
+"""Percent of the reference peak that the member of a halogen pattern at the top must reach."""
 LARGEST_MISFIT = 0.2
 """Of two clusters normalised to 1 each; common practice allows some per cent per peak, no source."""
 
@@ -38,7 +40,9 @@ def highest_plausible_cluster(mz: NDArray[np.float64], intensity: NDArray[np.flo
     heights = {int(m): float(r) for m, r in zip(mz, relative, strict=True) if r >= NOISE}
     monoisotopic = [m for m in sorted(heights) if not _is_satellite(m, heights)]
     highest = _reference_of_halogen_cluster(monoisotopic[-1], heights)
-    losses = [highest - m for m in monoisotopic if heights[m] >= MAJOR and highest - m in IMPLAUSIBLE_LOSSES]
+    # A halogen cluster of a fragment counts with its reference only: its own satellites are no fragments.
+    fragments = {_reference_of_halogen_cluster(m, heights) for m in monoisotopic if heights[m] >= MAJOR}
+    losses = sorted(highest - m for m in fragments if highest - m in IMPLAUSIBLE_LOSSES)
     if losses:
         reason = (
             f"the highest cluster, m/z {highest}, is no molecular ion: m/z {highest - losses[-1]} would be a loss of"
@@ -61,7 +65,11 @@ def _reference_of_halogen_cluster(top: int, heights: dict[int, float]) -> int:
             for bromine in range(MOST_HALOGENS + 1 - chlorine):
                 if chlorine + bromine < 2:
                     continue
-                misfit = _misfit(reference, isotope_pattern(Formula.of({"Cl": chlorine, "Br": bromine})), heights)
+                pattern = isotope_pattern(Formula.of({"Cl": chlorine, "Br": bromine}))
+                # The pattern has to reach the top, or it is that of a cluster further down.
+                if pattern.get(top - reference, 0.0) < VISIBLE_MEMBER:
+                    continue
+                misfit = _misfit(reference, pattern, heights)
                 if misfit < best_misfit:
                     best, best_misfit = reference, misfit
     return best

@@ -10,23 +10,32 @@ from typing import Any
 from speclib.store.writing import WriteTransaction
 
 
-def flag_dependent_cases(transaction: WriteTransaction, assignment_ids: Iterable[int], reason: str) -> list[int]:
-    """Flag every case with a live proposal that one of these donor assignments speaks for; return the case numbers."""
+def flag_dependent_cases(
+    transaction: WriteTransaction,
+    cause_uid: str,
+    assignment_ids: Iterable[int],
+    reason: str,
+    *,
+    spectrum_id: int | None = None,
+) -> list[int]:
+    """Flag, once each, the cases that rest on something taken back, and return their numbers.
+
+    A case rests on an assignment that speaks for one of its live proposals, and on a spectrum (`spectrum_id`) that is
+    one of its neighbours. The revision of a flagged case counts up, so that a reviewer who has not seen it is told.
+    """
     rows = transaction.connection.execute(
-        "SELECT DISTINCT c.id, c.uid, l.donor_uid FROM lineage l JOIN assignments a ON a.id = l.assignment_id "
-        "JOIN cases c ON c.id = a.case_id WHERE a.state IN ('proposed', 'accepted') "
-        "AND l.donor_id IN (SELECT value FROM json_each(?)) ORDER BY c.id, l.donor_uid",
-        (json.dumps(sorted(set(assignment_ids))),),
+        "SELECT c.id, c.uid FROM cases c WHERE EXISTS ("
+        "SELECT 1 FROM lineage l JOIN assignments a ON a.id = l.assignment_id WHERE a.case_id = c.id "
+        "AND a.state IN ('proposed', 'accepted') AND l.donor_id IN (SELECT value FROM json_each(?1))) "
+        "OR EXISTS (SELECT 1 FROM case_neighbours n WHERE n.case_id = c.id AND n.spectrum_id = ?2) ORDER BY c.id",
+        (json.dumps(sorted(set(assignment_ids))), spectrum_id),
     ).fetchall()
     for row in rows:
         transaction.insert(
-            "flags",
-            subject_uid=row["uid"],
-            cause_uid=row["donor_uid"],
-            reason=reason,
-            opened_event=transaction.event_id,
+            "flags", subject_uid=row["uid"], cause_uid=cause_uid, reason=reason, opened_event=transaction.event_id
         )
-    return sorted({row["id"] for row in rows})
+        transaction.update("cases", row["id"])
+    return [row["id"] for row in rows]
 
 
 def open_flags(connection: sqlite3.Connection, subject_uid: str) -> list[dict[str, Any]]:

@@ -32,6 +32,7 @@ from speclib.workflows.query import (
     resolve_query,
 )
 from speclib.workflows.search import reference_rows
+from speclib.workflows.sources import RunSelection
 
 DEFAULT_MIN_SIMILARITY = 0.3
 DEFAULT_MOST_DONORS = 20
@@ -52,6 +53,7 @@ class CarryRequest:
     min_matched: int = DEFAULT_MIN_MATCHED
     most_donors: int = DEFAULT_MOST_DONORS
     reading: ReadOptions = field(default_factory=ReadOptions)
+    selection: RunSelection | None = None
 
 
 def carry_to_unknown(
@@ -67,7 +69,9 @@ def carry_to_unknown(
     Raises:
         SpeclibError: the target or an option cannot be used; SignatureMissingError when saving unsigned.
     """
-    asked = resolve_query(library, request.target, index=request.index, reading=request.reading)
+    asked = resolve_query(
+        library, request.target, index=request.index, reading=request.reading, selection=request.selection
+    )
     given = given_molecule(request.mass, request.formula)
     query, mass, formula = comparable_query(asked, given)
     rows, keep, state = reference_rows(library, asked, request.exclude_compounds)

@@ -73,6 +73,16 @@ def review_case(
         case = get_case(transaction.connection, case_id)
         if case.status != "open":
             raise RefusedError(f"case {case_id} is {case.status}", "decisions are made on open cases")
+        if decisions.seen_rev is not None and decisions.seen_rev != case.rev:
+            raise RefusedError(
+                f"case {case_id} was changed by somebody else: it is at revision {case.rev} now",
+                "look at it again, then decide",
+            )
+        if case.flags and decisions.accept_from is not None and not decisions.settle_flags:
+            raise RefusedError(
+                f"case {case_id} is flagged: {case.flags[0]['reason']}",
+                "look at what it rests on, then settle the flags with --settle-flags",
+            )
         plan = _plan(case, decisions)
         settled = close_flags(transaction, case.uid) if decisions.settle_flags else 0
         if plan or settled:
@@ -127,13 +137,17 @@ def _plan(case: Case, decisions: Decisions) -> list[_Planned]:
     add(decisions.reject, AssignmentState.REJECTED, None)
     if decisions.accept_from is not None:
         named = {*decisions.accept, *decisions.reject}
-        best = {p.peak: p.id for p in sorted(case.proposals, key=lambda p: p.confidence or 0.0)}
+        taken = {
+            p.peak for p in case.proposals if p.state == AssignmentState.ACCEPTED.value or p.id in decisions.accept
+        }
+        undecided = [p for p in case.proposals if p.state == AssignmentState.PROPOSED.value and p.id not in named]
+        best = {p.peak: p.id for p in sorted(undecided, key=lambda p: p.confidence or 0.0) if p.peak not in taken}
         plan += [
             (p, AssignmentState.ACCEPTED, "by rule")
             for p in case.proposals
             if p.state == AssignmentState.PROPOSED.value
             and p.id not in named
-            and p.id == best[p.peak]
+            and p.id == best.get(p.peak)
             and (p.confidence or 0.0) >= decisions.accept_from
         ]
     return plan

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Sequence
 from dataclasses import dataclass, field, replace
 from pathlib import Path
@@ -10,7 +11,7 @@ from speclib.chemistry.formula import parse_formula
 from speclib.clock import utc_text
 from speclib.curation.intake_checks import check_at_intake, check_same_conditions
 from speclib.errors import InputFileError, LibraryError, RefusedError, SignatureMissingError, SpeclibError
-from speclib.formats.reading import ReadOptions, read_spectra
+from speclib.formats.reading import ReadOptions
 from speclib.model.compound import Compound
 from speclib.model.entry import LibrarySpectrum, Role, Status
 from speclib.model.finding import Finding, Severity
@@ -32,14 +33,16 @@ from speclib.store.writing import WriteTransaction
 from speclib.workflows.compounds import CheckedCompound, NewCompound, check_new_compound, write_compound
 from speclib.workflows.confirm import require_gate
 from speclib.workflows.manifest import ManifestRow, phase_named, read_manifest
+from speclib.workflows.sources import RunSelection, read_source
 
 
 @dataclass(frozen=True)
 class IntakeOptions:
-    """How to take spectra in: reading options, and whether identical peaks may be stored again."""
+    """How to take spectra in: reading options, whether identical peaks may be stored again, which scans of a run."""
 
     reading: ReadOptions = field(default_factory=ReadOptions)
     replicate: bool = False
+    selection: RunSelection | None = None
 
 
 @dataclass(frozen=True)
@@ -131,7 +134,7 @@ def _intake_file(
         try:
             reading = _reading(options.reading, row)
             if reading not in read:
-                read[reading] = read_spectra(path, reading)
+                read[reading] = read_source(path, reading, options.selection)
             source = read[reading]
             orders.extend(_orders(source, row))
         except SpeclibError as error:
@@ -211,7 +214,8 @@ def _store(
     same = spectra_with_content(connection, found.spectrum.content_hash)
     held = None if options.replicate else _held(same, compound)
     if held:
-        remark = f"its peaks are held already as {held.label}; nothing was stored (--replicate stores them again)"
+        gone = ", which was withdrawn" if held.status is Status.WITHDRAWN else ""
+        remark = f"its peaks are held already as {held.label}{gone}; nothing was stored (--replicate stores them again)"
         differing = _differing(held, order)
         if differing:
             remark += f"; what this row says differently was NOT taken over: {', '.join(differing)}"
@@ -307,10 +311,16 @@ def _differing(held: LibrarySpectrum, order: _Order) -> list[str]:
     """What an order says of a held spectrum that the library does not: a silent loss of corrections would be worse."""
     stored = held.spectrum.measurement.known()
     stated = order.found.spectrum.measurement.known()
-    differing = [name for name, value in stated.items() if stored.get(name) != value]
-    if order.row.status is Status.CONFIRMED and held.status is not Status.CONFIRMED:
+    differing = [name for name, value in stated.items() if not _same(stored.get(name), value)]
+    if order.row.status is Status.CONFIRMED and held.status is Status.PROVISIONAL:
         differing.insert(0, f"status confirmed (use `speclib confirm {held.id}`)")
     return differing
+
+
+def _same(a: object, b: object) -> bool:
+    if isinstance(a, float) and isinstance(b, float):
+        return math.isclose(a, b, rel_tol=1e-9)
+    return a == b
 
 
 def _status_text(entry: LibrarySpectrum) -> str:

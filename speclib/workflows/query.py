@@ -6,10 +6,11 @@ from dataclasses import dataclass, replace
 from pathlib import Path
 
 from speclib.chemistry.formula import Formula, parse_formula, require_closed_shell
+from speclib.chemistry.isotopes import isotope_pattern
 from speclib.chemistry.unit_mass import HIGHEST_DEFECT, LOWEST_DEFECT
 from speclib.curation.intake_checks import check_at_intake
 from speclib.errors import AmbiguousEntryError, EntryNotFoundError, InputFileError, InvalidValueError
-from speclib.formats.reading import ReadOptions, read_spectra
+from speclib.formats.reading import ReadOptions
 from speclib.model.entry import LibrarySpectrum
 from speclib.model.results import Estimate, Query
 from speclib.model.spectrum import SourceFile, SourceSpectrum, Spectrum
@@ -18,8 +19,9 @@ from speclib.search.rows import Comparable
 from speclib.store.library import Library
 from speclib.store.spectra import get_spectrum
 from speclib.workflows.manifest import phase_named
+from speclib.workflows.sources import RUN_READER, RunSelection, read_source
 
-MOST_ISOTOPE_STEPS = 8
+MOST_ISOTOPE_STEPS = 12
 """Satellites of polyhalogenated molecular ions reach some steps above the reference composition."""
 
 
@@ -44,7 +46,12 @@ class Molecule:
 
 
 def resolve_query(
-    library: Library, target: str, *, index: int | None = None, reading: ReadOptions | None = None
+    library: Library,
+    target: str,
+    *,
+    index: int | None = None,
+    reading: ReadOptions | None = None,
+    selection: RunSelection | None = None,
 ) -> Asked:
     """Find the spectrum that `target` means: the path of a file, or the number of a stored spectrum.
 
@@ -59,12 +66,14 @@ def resolve_query(
         with library.reading() as connection:
             entry = get_spectrum(connection, int(target))
         return _stored(entry)
-    source = read_spectra(path, reading or ReadOptions())
+    source = read_source(path, reading or ReadOptions(), selection)
     if index is None and len(source.spectra) > 1:
         raise InputFileError(
             source.file_name, f"holds {len(source.spectra)} spectra", advice="choose one with --index N"
         )
-    chosen = next((s for s in source.spectra if s.index == (index or s.index)), None)
+    # The one spectrum taken from a run is numbered by its scan.
+    wanted = None if source.reader == RUN_READER else index
+    chosen = next((s for s in source.spectra if wanted is None or s.index == wanted), None)
     if chosen is None:
         raise EntryNotFoundError(
             f"{source.file_name} has no spectrum {index}, only {len(source.spectra)}", "correct --index"
@@ -129,7 +138,8 @@ def mass_remarks(query: Comparable) -> list[str]:
     if query.nominal_mass is None:
         return []
     peaks = query.nominal
-    above = (peaks.mz > query.nominal_mass + MOST_ISOTOPE_STEPS) & (peaks.intensity >= 0.02 * peaks.intensity.max())
+    steps = max(isotope_pattern(query.formula)) if query.formula else MOST_ISOTOPE_STEPS
+    above = (peaks.mz > query.nominal_mass + steps) & (peaks.intensity >= 0.02 * peaks.intensity.max())
     if not above.any():
         return []
     listed = ", ".join(f"{mz:g}" for mz in peaks.mz[above][-4:])

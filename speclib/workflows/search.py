@@ -24,6 +24,7 @@ from speclib.workflows.query import (
     reading_remarks,
     resolve_query,
 )
+from speclib.workflows.sources import RunSelection
 
 
 @dataclass(frozen=True)
@@ -38,6 +39,7 @@ class SearchRequest:
     confirmed_only: bool = False
     settings: SearchSettings = field(default_factory=SearchSettings)
     reading: ReadOptions = field(default_factory=ReadOptions)
+    selection: RunSelection | None = None
 
 
 def search_library(library: Library, request: SearchRequest, *, progress: Progress = SILENT) -> SearchResult:
@@ -46,7 +48,9 @@ def search_library(library: Library, request: SearchRequest, *, progress: Progre
     Raises:
         SpeclibError: the target or an option cannot be used, or the measure needs a molecular mass that is not known.
     """
-    asked = resolve_query(library, request.target, index=request.index, reading=request.reading)
+    asked = resolve_query(
+        library, request.target, index=request.index, reading=request.reading, selection=request.selection
+    )
     given = given_molecule(request.mass, request.formula)
     query, mass, formula = comparable_query(asked, given)
     if request.settings.measure is not Measure.COSINE and query.nominal_mass is None:

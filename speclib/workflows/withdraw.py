@@ -58,7 +58,10 @@ def withdraw_references(
             sign(transaction, entry, Status.WITHDRAWN, analyst=(analyst or "").strip(), reason=words)
             donors = assignments_of(transaction.connection, spectrum_id, (AssignmentState.ACCEPTED,))
             because = f"{entry.label} was withdrawn: {words}"
-            flagged.update(flag_dependent_cases(transaction, [a.id for a in donors], because))
+            ids_of_donors = [a.id for a in donors]
+            flagged.update(
+                flag_dependent_cases(transaction, entry.uid, ids_of_donors, because, spectrum_id=spectrum_id)
+            )
         transaction.detail = {"spectra": ids, "flagged_cases": sorted(flagged)}
     with library.reading() as connection:
         entries = tuple(get_spectrum(connection, i) for i in ids)
@@ -85,14 +88,14 @@ def retract_assignment(
             "assignments", assignment_id, expected_rev=held.rev, state=AssignmentState.REJECTED.value, accepted_how=None
         )
         because = f"assignment {assignment_id} (m/z {held.mz:g} {held.formula}) was retracted: {words}"
-        flagged = flag_dependent_cases(transaction, [assignment_id], because)
+        flagged = flag_dependent_cases(transaction, held.uid, [assignment_id], because)
         transaction.detail = {"assignment": assignment_id, "flagged_cases": flagged}
     with library.reading() as connection:
         return WithdrawResult((), _get(connection, assignment_id), tuple(flagged), library_state(connection))
 
 
 def _get(connection: Any, assignment_id: int) -> Assignment:
-    spectrum_id = spectrum_of_assignment(connection, assignment_id)
+    spectrum_id = spectrum_of_assignment(connection, assignment_id) if assignment_id < 2**63 else None
     if spectrum_id is None:
         raise EntryNotFoundError(
             f"the library holds no assignment {assignment_id}", "see `speclib compound show NAME --json`"

@@ -486,3 +486,49 @@ def test_references_of_one_compound_with_different_carrier_gases_are_a_doubt(spe
         taken = document(speclib(*L, "intake", f"{gas}_{height}.txt", "--compound", "2-hexanone", *BY, "--json"))
         reasons = [f["reason"] for f in taken["spectra"][0]["findings"] if f["check"] == "mixed conditions"]
         assert bool(reasons) is (gas == "hydrogen"), reasons
+
+
+def test_accept_from_leaves_a_peak_alone_that_has_an_accepted_ion(speclib: Any, library: Path) -> None:
+    assert library.exists()
+    proposals = document(speclib(*CARRY, *BY, "--json"))["proposals"]
+    first = proposals[0]["id"]
+    ok(speclib(*L, "review", "1", "--accept", first, *BY))
+    done = document(speclib(*L, "review", "1", "--accept-from", "0.0", *BY, "--json"))
+    by_peak = {p["id"]: p["mz"] for p in proposals}
+    peaks = [by_peak[i] for i in [first, *done["accepted"]]]
+    assert len(peaks) == len(set(peaks))
+
+
+def test_a_withdrawn_neighbour_flags_the_case_though_its_replicate_has_the_assignments(
+    speclib: Any, library: Path
+) -> None:
+    assert library.exists()
+    donors = document(speclib(*CARRY, *BY, "--json"))["donors"]
+    near = next(d["spectrum_id"] for d in donors if d["compound"]["name"] == "2-hexanone")
+    done = document(speclib(*L, "withdraw", near, "--reason", "wrong vial", *BY, "--json"))
+    assert done["flagged_cases"] == [1]
+    assert len(document(speclib(*L, "case", "show", "1", "--json"))["flags"]) == 1
+    late = speclib(*L, "review", "1", "--accept-from", "0.5", *BY)
+    assert late.status == 1
+    assert "flagged" in late.err
+    assert ok(speclib(*L, "verify")).status == 0
+
+
+def test_what_was_not_measured_gets_no_assignment(speclib: Any, library: Path) -> None:
+    assert library.exists()
+    Path("zero.txt").write_text("# mz_from: 25\n# mz_to: 300\n43\t100\n58\t0\n71\t20\n85\t20\n128\t10\n", "utf-8")
+    args = ("carry", "zero.txt", "--formula", "C8H16O", "--no-save", "--min-similarity", "0.05", "--json")
+    found = document(speclib(*L, *args))
+    assert found["proposals"]
+    assert 58.0 not in [p["mz"] for p in found["proposals"]]
+
+
+def test_an_ion_far_more_unsaturated_than_the_molecule_is_refused(speclib: Any, library: Path) -> None:
+    assert library.exists()
+    ok(speclib(*L, "assign", "4", "--mz", "91", "--formula", "C7H7", "--mechanism", "benzylic cleavage", *BY))
+    lines = "# mz_from: 25\n# mz_to: 300\n39\t30\n65\t30\n91\t100\n105\t20\n140\t10\n"
+    Path("saturated.txt").write_text(lines, "utf-8")
+    args = ("carry", "saturated.txt", "--formula", "C9H20O", "--no-save", "--min-similarity", "0.05", "--json")
+    found = document(speclib(*L, *args))
+    assert "C7H7" not in [p["formula"] for p in found["proposals"]]
+    assert [p["refused_by"] for p in found["refused"] if p["formula"] == "C7H7"] == ["formula"]
