@@ -219,14 +219,16 @@ def _settings(request: CarryRequest, result: CarryResult) -> dict[str, Any]:
 
 
 def _store_unknown(transaction: WriteTransaction, library: Library, asked: Asked, result: CarryResult) -> int:
-    """Store the file's spectrum as an unknown, or return the unknown that has its peaks already."""
+    """Store the file's spectrum as an unknown, or return the held one with its peaks; a mass that is given is kept."""
     if asked.source is None or asked.found is None:
         raise ValueError("a query is a stored spectrum or comes from a file")
     same = spectra_with_content(transaction.connection, asked.spectrum.content_hash)
     held = next((entry for entry in same if entry.role is Role.UNKNOWN), None)
-    if held:
-        return held.id
     mass = result.molecular_mass.value if result.molecular_mass.origin == "given" else None
+    if held:
+        if held.molecular_mass is None and isinstance(mass, int):
+            transaction.update("spectra", held.id, expected_rev=held.rev, molecular_mass=mass)
+        return held.id
     spectrum_id = insert_spectrum(
         transaction,
         asked.found,

@@ -55,7 +55,11 @@ def add_compounds_from(
         InputFileError: the file as a whole cannot be read.
     """
     sd_file = SDF_MARK in read_text(path)
-    records = list(_of_sdf(path) if sd_file else _of_table(path))
+    # Parents first: a derivative may stand above the compound that it names.
+    records = sorted(
+        _of_sdf(path) if sd_file else _of_table(path),
+        key=lambda record: isinstance(record[1], NewCompound) and bool(record[1].derivative_of),
+    )
     word = "record" if sd_file else "line"
     added: list[int] = []
     skipped: list[Skipped] = []

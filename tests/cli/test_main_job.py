@@ -193,6 +193,15 @@ def test_a_mass_given_once_is_remembered_with_the_unknown(speclib: Any, library:
     assert found["neighbours"][0]["compound"]["name"] == "2-heptanone"
 
 
+def test_a_mass_given_later_is_remembered_with_an_unknown_held_already(speclib: Any, library: Path) -> None:
+    assert library.exists()
+    ok(speclib(*L, "intake", "unknown.txt", *BY))
+    ok(speclib(*CARRY, *BY))
+    found = document(speclib(*L, "search", "5", "--json"))
+    assert (found["molecular_mass"]["value"], found["molecular_mass"]["origin"]) == (128, "recorded with the unknown")
+    assert ok(speclib(*L, "verify")).status == 0
+
+
 def test_nothing_is_invented_where_nothing_is_computed_yet(speclib: Any, library: Path) -> None:
     assert library.exists()
     found = document(speclib(*L, "search", "unknown.txt", "--json"))

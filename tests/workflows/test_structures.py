@@ -68,3 +68,14 @@ def test_a_file_that_is_no_structure_file_is_refused(library: Library, tmp_path:
     path.write_bytes(content)
     with pytest.raises(InputFileError, match=r"odd\.csv"):
         add_compounds_from(library, path, analyst="A")
+
+
+def test_a_derivative_may_stand_above_its_parent(library: Library, tmp_path: Path) -> None:
+    path = tmp_path / "family.csv"
+    path.write_text(
+        "compound,smiles,derivative_of,derivative\noctanol TMS,CCCCCCCCO[Si](C)(C)C,octanol,TMS\noctanol,CCCCCCCCO,,\n",
+        encoding="utf-8",
+    )
+    result = add_compounds_from(library, path, analyst="A")
+    assert result.skipped == ()
+    assert {c.name: c.derivative for c in result.compounds} == {"octanol TMS": "TMS", "octanol": None}
